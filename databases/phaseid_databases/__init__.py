@@ -1,0 +1,1 @@
+"""The phases that ship: one YAML file per family."""

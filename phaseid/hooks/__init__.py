@@ -1,0 +1,1 @@
+"""Hooks: how others add to phaseid."""

@@ -1,0 +1,1 @@
+"""Image: from a file to clusters of grey."""

@@ -1,0 +1,1 @@
+"""Inference: from clusters to candidates."""

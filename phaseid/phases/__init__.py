@@ -1,0 +1,1 @@
+"""Phases: what the candidates are."""

@@ -1,0 +1,1 @@
+"""Physics: what a composition does to an electron beam."""

@@ -1,0 +1,1 @@
+"""Report: what a person or a program reads."""

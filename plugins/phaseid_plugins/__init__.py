@@ -1,0 +1,1 @@
+"""The contexts that ship, as ordinary plugins."""
