@@ -1,0 +1,396 @@
+"""The grey scale of an image: the joint posterior of offset, gain and the smooth departure.
+
+    grey of cluster k = offset + gain * apparent signal + noise
+    true signal = apparent signal + departure(apparent signal)
+
+The posterior is carried by weighted particles. Each particle takes two of the pieces of evidence
+(known phases first, else the darkest and the brightest cluster), draws what they are, solves for the
+line through them, and is weighted by all the evidence that is left (importance sampling; Robert &
+Casella 2004, Monte Carlo Statistical Methods, ch. 3). No particle ever needs to be moved, so several
+separate explanations of an image stay in the answer with the weight they deserve.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from phaseid.inference.axis import SignalAxis
+from phaseid.inference.departure import Departure
+from phaseid.inference.observations import Anchor, Observation
+
+Floats = NDArray[np.float64]
+
+_BATCH = 1 << 14
+_TINY = 1e-300
+
+
+@dataclass(frozen=True)
+class Particles:
+    """Weighted draws from the posterior of the grey scale.
+
+    Attributes
+    ----------
+    offset, gain : ndarray of shape (N,)
+        The line of each particle: grey = offset + gain * apparent signal.
+    curves : ndarray of shape (N, knots)
+        Departure of each particle.
+    signal : ndarray of shape (N, K)
+        True signal each particle gives to each cluster (the bound, for a clipped one).
+    weight : ndarray of shape (N,)
+        Weights, summing to one.
+    log_evidence : float
+        Logarithm of the mean likelihood: how well the evidence hangs together.
+    """
+
+    offset: Floats
+    gain: Floats
+    curves: Floats
+    signal: Floats
+    weight: Floats
+    log_evidence: float
+
+    @property
+    def effective(self) -> float:
+        """Effective number of particles (Kish 1965)."""
+        return float(1.0 / np.sum(self.weight**2))
+
+    def mean_sd(self, values: Floats) -> tuple[Floats, Floats]:
+        """Weighted mean and standard deviation of particle values along the first axis."""
+        mean = self.weight @ values
+        variance = self.weight @ (values - mean) ** 2
+        return mean, np.sqrt(np.maximum(variance, 0.0))
+
+
+@dataclass(frozen=True)
+class ScaleProblem:
+    """Everything that bears on the grey scale.
+
+    Attributes
+    ----------
+    axis : SignalAxis
+    departure : Departure
+    observations : sequence of Observation
+        K clusters; those that an anchor names are skipped here, the anchor speaks for them.
+    densities : ndarray of shape (K, n)
+        For each cluster the density of its true signal over all candidates, evidence included.
+    anchors : sequence of Anchor
+    drift : tuple of float
+        Standard deviations, between the images of a series, of ln gain and of the offset in grey levels.
+    """
+
+    axis: SignalAxis
+    departure: Departure
+    observations: Sequence[Observation]
+    densities: Floats
+    anchors: Sequence[Anchor] = ()
+    drift: tuple[float, float] = (0.0, 0.0)
+
+    def sample(self, seed: int = 0, effective: float = 2000.0, most: int = 8 * _BATCH) -> Particles:
+        """Draw particles until `effective` of them count, or `most` are drawn.
+
+        Parameters
+        ----------
+        seed : int
+            The same seed gives the same answer.
+        effective : float
+            Effective number of particles wanted.
+        most : int
+            Largest number of particles drawn.
+
+        Returns
+        -------
+        Particles
+        """
+        generator = np.random.default_rng(seed)
+        sampler = _Sampler(self)
+        batches: list[_Batch] = []
+        while True:
+            batches.append(sampler.batch(_BATCH, generator))
+            log_weight = np.concatenate([b.log_weight for b in batches])
+            peak = float(log_weight.max())
+            weight = np.exp(log_weight - peak)
+            enough = weight.sum() ** 2 / np.sum(weight**2) >= effective
+            if enough or len(log_weight) >= most:
+                break
+        total = float(weight.sum())
+        # Particles that carry nothing only cost time downstream.
+        kept = weight > 1e-9 * weight.max()
+        joined = _Batch.join(batches)
+        return Particles(
+            joined.offset[kept],
+            joined.gain[kept],
+            joined.curves[kept],
+            joined.signal[kept],
+            weight[kept] / weight[kept].sum(),
+            float(np.log(total / len(weight)) + peak),
+        )
+
+
+@dataclass(frozen=True)
+class _Batch:
+    offset: Floats
+    gain: Floats
+    curves: Floats
+    signal: Floats
+    log_weight: Floats
+
+    @staticmethod
+    def join(batches: Sequence[_Batch]) -> _Batch:
+        if len(batches) == 1:
+            return batches[0]
+        names = ("offset", "gain", "curves", "signal", "log_weight")
+        return _Batch(*(np.concatenate([getattr(b, n) for b in batches]) for n in names))
+
+
+class _Sampler:
+    """Draws batches of particles for one problem."""
+
+    def __init__(self, problem: ScaleProblem) -> None:
+        self.problem = problem
+        axis = problem.axis
+        self.named = {a.observation for a in problem.anchors if a.observation is not None}
+        self.anchor_densities = [_anchor_density(axis, a) for a in problem.anchors]
+        self.images = 1 + max(
+            [0, *(o.image for o in problem.observations), *(a.image for a in problem.anchors)]
+        )
+        self.pair = self._choose_pair()
+        steps = np.diff(axis.nodes)
+        halves = (problem.densities[:, 1:] + problem.densities[:, :-1]) / 2
+        self.cumulative = np.zeros_like(problem.densities)
+        np.cumsum(halves * steps, axis=1, out=self.cumulative[:, 1:])
+
+    def _choose_pair(self) -> list[tuple[str, int]]:
+        """Pick the two pieces of evidence that the line is drawn through."""
+        anchors = [i for i, a in enumerate(self.problem.anchors) if a.clipped is None]
+        free = [
+            k
+            for k, o in enumerate(self.problem.observations)
+            if o.clipped is None and o.blend is None and k not in self.named
+        ]
+        greys = {k: self.problem.observations[k].grey_mean for k in free}
+        if len(anchors) >= 2:
+            known = self.problem.anchors
+            pairs = [(i, j) for n, i in enumerate(anchors) for j in anchors[n + 1 :]]
+            far = max(pairs, key=lambda p: _lever(known[p[0]], known[p[1]]))
+            return [("anchor", far[0]), ("anchor", far[1])]
+        if anchors:
+            grey = self.problem.anchors[anchors[0]].grey
+            others = [k for k in free if greys[k] != grey]
+            if not others:
+                return [("anchor", anchors[0])]
+            far_cluster = max(others, key=lambda k: abs(greys[k] - grey))
+            return [("anchor", anchors[0]), ("cluster", far_cluster)]
+        if len(free) >= 2:
+            low, high = min(free, key=greys.__getitem__), max(free, key=greys.__getitem__)
+            if greys[low] < greys[high]:
+                return [("cluster", low), ("cluster", high)]
+        return [("cluster", k) for k in free[:1]]
+
+    def batch(self, count: int, generator: np.random.Generator) -> _Batch:
+        problem, departure = self.problem, self.problem.departure
+        uniforms = _lattice(count, 2 + departure.terms, generator)
+        curves = departure.curves(_normal_quantile(uniforms[:, 2:]))
+        drifts = self._drifts(count, generator)
+        offset, gain, drawn, log_weight = self._lines(uniforms[:, :2], curves, drifts, generator)
+        signal = np.zeros((count, len(problem.observations)))
+        # Blends need the signal of the cluster around them, so they come last.
+        order = sorted(
+            range(len(problem.observations)),
+            key=lambda k: problem.observations[k].blend is not None,
+        )
+        for k in order:
+            if k in drawn:
+                signal[:, k] = drawn[k]
+                continue
+            log_weight += self._cluster(k, offset, gain, curves, drifts, signal, generator)
+        paired = {index for kind, index in self.pair if kind == "anchor"}
+        for i, anchor in enumerate(problem.anchors):
+            if i not in paired:
+                log_weight += self._anchor(anchor, offset, gain, curves, drifts)
+        log_weight = np.nan_to_num(log_weight, nan=-1e9, neginf=-1e9)
+        return _Batch(offset, gain, curves, signal, log_weight)
+
+    def _drifts(self, count: int, generator: np.random.Generator) -> tuple[Floats, Floats]:
+        """Per particle and image: how far gain (a factor) and offset have moved since the first image."""
+        gain_sd, offset_sd = self.problem.drift
+        gains = np.exp(gain_sd * generator.standard_normal((count, self.images)))
+        offsets = offset_sd * generator.standard_normal((count, self.images))
+        gains[:, 0], offsets[:, 0] = 1.0, 0.0
+        return gains, offsets
+
+    def _lines(
+        self,
+        uniforms: Floats,
+        curves: Floats,
+        drifts: tuple[Floats, Floats],
+        generator: np.random.Generator,
+    ) -> tuple[Floats, Floats, dict[int, Floats], Floats]:
+        """Solve for the line through the two chosen pieces of evidence, one line per particle."""
+        count = len(curves)
+        points: list[tuple[Floats, Floats]] = []
+        drawn: dict[int, Floats] = {}
+        for column, (kind, index) in enumerate(self.pair):
+            seen: Anchor | Observation
+            if kind == "anchor":
+                seen = self.problem.anchors[index]
+                grey, density = seen.grey, self.anchor_densities[index]
+            else:
+                seen = self.problem.observations[index]
+                grey, density = seen.grey_mean, self.problem.densities[index]
+            se = seen.grey_se
+            if density is None:
+                true = np.zeros(count)
+            else:
+                true = self.problem.axis.draw(density, uniforms[:, column])
+            if kind == "cluster":
+                drawn[index] = true
+            apparent = self.problem.departure.undo(curves, true) * drifts[0][:, seen.image]
+            jittered = grey + se * generator.standard_normal(count) - drifts[1][:, seen.image]
+            points.append((jittered, apparent))
+        while len(points) < 2:
+            points.append(self._free_point(points, uniforms[:, len(points)]))
+        (grey_a, at_a), (grey_b, at_b) = points
+        with np.errstate(divide="ignore", invalid="ignore"):
+            gain = (grey_a - grey_b) / (at_a - at_b)
+            # Prior 1/gain (an operator sets the contrast to fill the range, whatever the phases are)
+            # over the Jacobian |signal_a - signal_b| of solving for the line.
+            log_weight = -np.log(np.abs(grey_a - grey_b) + _TINY)
+        bad = ~np.isfinite(gain) | (gain <= 0)
+        gain = np.where(bad, 1.0, gain)
+        log_weight = np.where(bad, -np.inf, log_weight)
+        return grey_a - gain * at_a, gain, drawn, log_weight
+
+    def _free_point(
+        self, points: list[tuple[Floats, Floats]], uniform: Floats
+    ) -> tuple[Floats, Floats]:
+        """Stand in for a missing point: anything on the axis.
+
+        The grey is placed one unit away, as the unit of grey is then arbitrary; the ranking of a lone
+        cluster comes out as the prior, which is the truth: one grey alone says nothing.
+        """
+        upper = self.problem.axis.upper
+        if not points:
+            return np.zeros(len(uniform)), np.zeros(len(uniform))
+        grey, apparent = points[0]
+        return grey + np.where(uniform * upper >= apparent, 1.0, -1.0), uniform * upper
+
+    def _cluster(
+        self,
+        k: int,
+        offset: Floats,
+        gain: Floats,
+        curves: Floats,
+        drifts: tuple[Floats, Floats],
+        signal: Floats,
+        generator: np.random.Generator,
+    ) -> Floats:
+        """Fill in the cluster's signal and return its log likelihood for every particle."""
+        problem, seen = self.problem, self.problem.observations[k]
+        gains = gain * drifts[0][:, seen.image]
+        jitter = 0.0 if seen.clipped else seen.grey_se
+        grey = seen.grey_mean + jitter * generator.standard_normal(len(offset))
+        apparent = (grey - offset - drifts[1][:, seen.image]) / gains
+        shift, slope = problem.departure.at(curves, apparent)
+        true, stretch = apparent + shift, 1.0 + slope
+        if seen.blend is not None:
+            spread = seen.blend.fraction_sd * generator.standard_normal(len(offset))
+            fraction = np.clip(seen.blend.fraction + spread, 0.02, 1.0)
+            true = (true - (1 - fraction) * signal[:, seen.blend.matrix]) / fraction
+            stretch = stretch / fraction
+        signal[:, k] = true
+        if k in self.named:
+            return np.zeros(len(offset))
+        if seen.clipped is not None:
+            return self._bound(k, true, seen.clipped)
+        below, share, inside = problem.axis.locate(true)
+        row = problem.densities[k]
+        density = row[below] + share * (row[below + 1] - row[below])
+        likelihood = np.where(inside, density * np.abs(stretch) / gains, 0.0)
+        return np.asarray(np.log(likelihood + _TINY))
+
+    def _bound(self, k: int, true: Floats, clipped: str) -> Floats:
+        below, share, _ = self.problem.axis.locate(true)
+        row = self.cumulative[k]
+        under = row[below] + share * (row[below + 1] - row[below])
+        # Off the dark end nothing can be darker; off the bright end everything is.
+        under = np.where(true < 0, 0.0, under)
+        left = under if clipped == "low" else row[-1] - under
+        return np.asarray(np.log(np.maximum(left, 0.0) + 1e-12))
+
+    def _anchor(
+        self,
+        anchor: Anchor,
+        offset: Floats,
+        gain: Floats,
+        curves: Floats,
+        drifts: tuple[Floats, Floats],
+    ) -> Floats:
+        gains = gain * drifts[0][:, anchor.image]
+        offsets = offset + drifts[1][:, anchor.image]
+        total = np.full(len(offset), _TINY)
+        for signal, own_sd, share in zip(anchor.signal, anchor.own_sd, anchor.share, strict=True):
+            apparent = self.problem.departure.undo(curves, np.full(len(offset), signal))
+            predicted = offsets + gains * apparent
+            if anchor.clipped is not None:
+                sign = 1.0 if anchor.clipped == "low" else -1.0
+                spread = np.sqrt(anchor.grey_se**2 + (gains * own_sd) ** 2) + 1e-9
+                total += share * _normal_cdf(sign * (anchor.grey - predicted) / spread)
+                continue
+            variance = anchor.grey_se**2 + (gains * own_sd) ** 2 + 1e-12
+            total += (
+                share
+                * np.exp(-0.5 * (anchor.grey - predicted) ** 2 / variance)
+                / np.sqrt(2 * np.pi * variance)
+            )
+        return np.asarray(np.log(total))
+
+
+def _lever(first: Anchor, second: Anchor) -> float:
+    """How well two anchors fix the line: their distance over their errors."""
+    error = np.hypot(
+        np.max(first.own_sd) + 0.02 * first.mean_signal,
+        np.max(second.own_sd) + 0.02 * second.mean_signal,
+    )
+    return float(abs(first.mean_signal - second.mean_signal) / (error + 1e-9))
+
+
+def _anchor_density(axis: SignalAxis, anchor: Anchor) -> Floats | None:
+    """Density of an anchor's true signal; None for the dark level, which is zero exactly."""
+    if not np.any(anchor.signal) and not np.any(anchor.own_sd):
+        return None
+    density: Floats = anchor.share @ axis.kernels(anchor.signal, anchor.own_sd).astype(float)
+    return density
+
+
+def _lattice(count: int, dimensions: int, generator: np.random.Generator) -> Floats:
+    """Evenly spread points in the unit cube: an additive recurrence, shifted at random.
+
+    The irrational steps are powers of the generalised golden ratio (Roberts 2018, common practice in
+    quasi-Monte Carlo); they cover the cube far more evenly than independent draws.
+    """
+    ratio = 1.5
+    for _ in range(40):
+        ratio = (1.0 + ratio) ** (1.0 / (dimensions + 1))
+    steps = ratio ** -np.arange(1, dimensions + 1)
+    shift = generator.random(dimensions)
+    points = np.mod(shift + np.outer(np.arange(1, count + 1), steps), 1.0)
+    inner: Floats = np.clip(points, 1e-9, 1 - 1e-9)
+    return inner
+
+
+def _normal_quantile(uniform: Floats) -> Floats:
+    from scipy.special import ndtri
+
+    quantile: Floats = ndtri(uniform)
+    return quantile
+
+
+def _normal_cdf(value: Floats) -> Floats:
+    from scipy.special import ndtr
+
+    probability: Floats = ndtr(value)
+    return probability
