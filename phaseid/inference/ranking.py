@@ -161,7 +161,8 @@ def _row_weights(question: Question) -> Floats:
     """Prior weight of every row for every cluster, evidence included, shape (K, R)."""
     candidates = question.candidates
     prior = question.prior / question.prior.sum() * (1.0 - question.none_weight)
-    return (prior[candidates.phase] * candidates.share)[None, :] * question.evidence
+    weights: Floats = (prior[candidates.phase] * candidates.share)[None, :] * question.evidence
+    return weights
 
 
 def _deposit(problem: ScaleProblem, particles: Particles, k: int) -> Floats:
@@ -181,9 +182,8 @@ def _deposit(problem: ScaleProblem, particles: Particles, k: int) -> Floats:
 def _cumulative(problem: ScaleProblem, density: Floats, clipped: str) -> Floats:
     """Mass on the lost side of each node."""
     steps = np.diff(problem.axis.nodes)
-    under = np.concatenate([[0.0], np.cumsum((density[1:] + density[:-1]) / 2 * steps)])
-    lost: Floats = under if clipped == "low" else under[-1] - under
-    return lost
+    under: Floats = np.concatenate([[0.0], np.cumsum((density[1:] + density[:-1]) / 2 * steps)])
+    return under if clipped == "low" else np.asarray(under[-1] - under)
 
 
 def _grey_factor(question: Question, deposits: Floats) -> Floats:
@@ -195,7 +195,7 @@ def _grey_factor(question: Question, deposits: Floats) -> Floats:
             under = candidates.cumulative
             side = under if seen.clipped == "low" else 1.0 - under
             factor[k] = side @ deposits[k].astype(np.float32)
-    return factor.astype(float)
+    return np.asarray(factor, dtype=float)
 
 
 def _none_factor(question: Question, deposits: Floats) -> Floats:
