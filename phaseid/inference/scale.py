@@ -21,6 +21,7 @@ from numpy.typing import NDArray
 from phaseid.inference.axis import SignalAxis
 from phaseid.inference.departure import Departure
 from phaseid.inference.observations import Anchor, Observation
+from phaseid.inference.proposal import PairProposal, adapt
 
 Floats = NDArray[np.float64]
 
@@ -107,15 +108,17 @@ class ScaleProblem:
         """
         generator = np.random.default_rng(seed)
         sampler = _Sampler(self)
-        batches: list[_Batch] = []
-        while True:
-            batches.append(sampler.batch(_BATCH, generator))
-            log_weight = np.concatenate([b.log_weight for b in batches])
-            peak = float(log_weight.max())
-            weight = np.exp(log_weight - peak)
-            enough = weight.sum() ** 2 / np.sum(weight**2) >= effective
-            if enough or len(log_weight) >= most:
+        batches = [sampler.batch(_BATCH, generator)]
+        weight, peak = _weights(batches)
+        for _ in range(2):
+            # A first look that found little is not kept: it only shows where to look.
+            if _effective(weight) >= min(effective, 0.2 * _BATCH) or not sampler.adapt(batches[-1]):
                 break
+            batches = [sampler.batch(_BATCH, generator)]
+            weight, peak = _weights(batches)
+        while _effective(weight) < effective and len(weight) < most:
+            batches.append(sampler.batch(_BATCH, generator))
+            weight, peak = _weights(batches)
         total = float(weight.sum())
         # Particles that carry nothing only cost time downstream.
         kept = weight > 1e-9 * weight.max()
@@ -136,14 +139,25 @@ class _Batch:
     gain: Floats
     curves: Floats
     signal: Floats
+    pair: Floats
     log_weight: Floats
 
     @staticmethod
     def join(batches: Sequence[_Batch]) -> _Batch:
         if len(batches) == 1:
             return batches[0]
-        names = ("offset", "gain", "curves", "signal", "log_weight")
+        names = ("offset", "gain", "curves", "signal", "pair", "log_weight")
         return _Batch(*(np.concatenate([getattr(b, n) for b in batches]) for n in names))
+
+
+def _weights(batches: Sequence[_Batch]) -> tuple[Floats, float]:
+    log_weight = np.concatenate([b.log_weight for b in batches])
+    peak = float(log_weight.max())
+    return np.exp(log_weight - peak), peak
+
+
+def _effective(weight: Floats) -> float:
+    return float(weight.sum() ** 2 / np.sum(weight**2))
 
 
 class _Sampler:
@@ -158,6 +172,7 @@ class _Sampler:
             [0, *(o.image for o in problem.observations), *(a.image for a in problem.anchors)]
         )
         self.pair = self._choose_pair()
+        self.proposal: PairProposal | None = None
         steps = np.diff(axis.nodes)
         halves = (problem.densities[:, 1:] + problem.densities[:, :-1]) / 2
         self.cumulative = np.zeros_like(problem.densities)
@@ -195,7 +210,10 @@ class _Sampler:
         uniforms = _lattice(count, 2 + departure.terms, generator)
         curves = departure.curves(_normal_quantile(uniforms[:, 2:]))
         drifts = self._drifts(count, generator)
-        offset, gain, drawn, log_weight = self._lines(uniforms[:, :2], curves, drifts, generator)
+        pair, log_weight = self._pair_signals(uniforms[:, :2], generator)
+        offset, gain, line_weight = self._lines(pair, uniforms, curves, drifts, generator)
+        log_weight += line_weight
+        drawn = {i: pair[:, n] for n, (kind, i) in enumerate(self.pair) if kind == "cluster"}
         signal = np.zeros((count, len(problem.observations)))
         # Blends need the signal of the cluster around them, so they come last.
         order = sorted(
@@ -212,7 +230,7 @@ class _Sampler:
             if i not in paired:
                 log_weight += self._anchor(anchor, offset, gain, curves, drifts)
         log_weight = np.nan_to_num(log_weight, nan=-1e9, neginf=-1e9)
-        return _Batch(offset, gain, curves, signal, log_weight)
+        return _Batch(offset, gain, curves, signal, pair, log_weight)
 
     def _drifts(self, count: int, generator: np.random.Generator) -> tuple[Floats, Floats]:
         """Per particle and image: how far gain (a factor) and offset have moved since the first image."""
@@ -222,35 +240,61 @@ class _Sampler:
         gains[:, 0], offsets[:, 0] = 1.0, 0.0
         return gains, offsets
 
+    def adapt(self, batch: _Batch) -> bool:
+        """Learn from a first look where to draw the next lines; False where there is nothing to learn."""
+        densities = [self._density(kind, index) for kind, index in self.pair]
+        if len(densities) < 2 or densities[0] is None or densities[1] is None:
+            return False
+        weight, _ = _weights([batch])
+        own = (densities[0], densities[1])
+        self.proposal = adapt(self.problem.axis, own, batch.pair[:, 0], batch.pair[:, 1], weight)
+        return True
+
+    def _density(self, kind: str, index: int) -> Floats | None:
+        if kind == "anchor":
+            return self.anchor_densities[index]
+        row: Floats = self.problem.densities[index]
+        return row
+
+    def _pair_signals(
+        self, uniforms: Floats, generator: np.random.Generator
+    ) -> tuple[Floats, Floats]:
+        """Draw the true signals of the pair, and the log ratio of their own density to the drawn one."""
+        count = len(uniforms)
+        if self.proposal is not None:
+            first, second, log_ratio = self.proposal.draw(uniforms, generator)
+            return np.column_stack([first, second]), log_ratio
+        pair = np.zeros((count, len(self.pair)))
+        for column, (kind, index) in enumerate(self.pair):
+            density = self._density(kind, index)
+            # The dark level is zero signal exactly.
+            if density is not None:
+                pair[:, column] = self.problem.axis.draw(density, uniforms[:, column])
+        return pair, np.zeros(count)
+
     def _lines(
         self,
+        pair: Floats,
         uniforms: Floats,
         curves: Floats,
         drifts: tuple[Floats, Floats],
         generator: np.random.Generator,
-    ) -> tuple[Floats, Floats, dict[int, Floats], Floats]:
+    ) -> tuple[Floats, Floats, Floats]:
         """Solve for the line through the two chosen pieces of evidence, one line per particle."""
-        count = len(curves)
         points: list[tuple[Floats, Floats]] = []
-        drawn: dict[int, Floats] = {}
         for column, (kind, index) in enumerate(self.pair):
             seen: Anchor | Observation
             if kind == "anchor":
                 seen = self.problem.anchors[index]
-                grey, density = seen.grey, self.anchor_densities[index]
+                grey = seen.grey
             else:
                 seen = self.problem.observations[index]
-                grey, density = seen.grey_mean, self.problem.densities[index]
-            se = seen.grey_se
-            if density is None:
-                true = np.zeros(count)
-            else:
-                true = self.problem.axis.draw(density, uniforms[:, column])
-            if kind == "cluster":
-                drawn[index] = true
-            apparent = self.problem.departure.undo(curves, true) * drifts[0][:, seen.image]
-            jittered = grey + se * generator.standard_normal(count) - drifts[1][:, seen.image]
-            points.append((jittered, apparent))
+                grey = seen.grey_mean
+            jitter = seen.grey_se * generator.standard_normal(len(pair))
+            apparent = self.problem.departure.undo(curves, pair[:, column])
+            points.append(
+                (grey + jitter - drifts[1][:, seen.image], apparent * drifts[0][:, seen.image])
+            )
         while len(points) < 2:
             points.append(self._free_point(points, uniforms[:, len(points)]))
         (grey_a, at_a), (grey_b, at_b) = points
@@ -262,7 +306,7 @@ class _Sampler:
         bad = ~np.isfinite(gain) | (gain <= 0)
         gain = np.where(bad, 1.0, gain)
         log_weight = np.where(bad, -np.inf, log_weight)
-        return grey_a - gain * at_a, gain, drawn, log_weight
+        return grey_a - gain * at_a, gain, log_weight
 
     def _free_point(
         self, points: list[tuple[Floats, Floats]], uniform: Floats
