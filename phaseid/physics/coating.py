@@ -26,8 +26,17 @@ _GROWTH = np.array(
 
 def film_growth(mean_atomic_number: float, thickness_over_range: float) -> float:
     """Backscatter coefficient of an unsupported film over that of the bulk, 0 to 1."""
-    by_z = [float(np.interp(thickness_over_range, _GROWTH_X, row)) for row in _GROWTH]
+    by_z = [_grown(thickness_over_range, row) for row in _GROWTH]
     return float(np.interp(np.log(mean_atomic_number), np.log(_GROWTH_Z), by_z))
+
+
+def _grown(thickness_over_range: float, row: Floats) -> float:
+    first, second = float(row[1]), float(row[2])
+    if thickness_over_range >= _GROWTH_X[1]:
+        return float(np.interp(thickness_over_range, _GROWTH_X, row))
+    # The simulated curves start as powers: faster than linear for light films.
+    power = max(float(np.log2(second / first)), 1.0)
+    return first * (thickness_over_range / float(_GROWTH_X[1])) ** power
 
 
 def coat_terms(
