@@ -36,7 +36,7 @@ def _grown(thickness_over_range: float, row: Floats) -> float:
         return float(np.interp(thickness_over_range, _GROWTH_X, row))
     # The simulated curves start as powers: faster than linear for light films.
     power = max(float(np.log2(second / first)), 1.0)
-    return first * (thickness_over_range / float(_GROWTH_X[1])) ** power
+    return float(first * (thickness_over_range / float(_GROWTH_X[1])) ** power)
 
 
 def coat_terms(
