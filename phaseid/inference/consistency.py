@@ -68,7 +68,8 @@ def suspect_anchors(
     Returns
     -------
     list of (Anchor, float)
-        Anchors more than `SUSPECT` standard deviations from what the others predict, the worst first.
+        Anchors more than `SUSPECT` standard deviations from what the others predict. First the one
+        without which the others agree best: a wrong reference also makes right ones look wrong.
     """
     exact = [a for a in anchors if a.clipped is None]
     if len(exact) < 3:
@@ -89,5 +90,6 @@ def suspect_anchors(
             abs(anchor.grey - mean) / np.sqrt(spread**2 + (gain * own) ** 2 + anchor.grey_se**2)
         )
         if score > SUSPECT:
-            found.append((anchor, score))
-    return sorted(found, key=lambda pair: -pair[1])
+            found.append((particles.log_evidence, anchor, score))
+    found.sort(key=lambda entry: -entry[0])
+    return [(anchor, score) for _, anchor, score in found]

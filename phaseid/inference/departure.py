@@ -63,9 +63,10 @@ class Departure:
     def undo(self, curves: Floats, true_signal: Floats) -> Floats:
         """Solve ``u + departure(u) = true_signal`` for the apparent signal u."""
         apparent = true_signal.copy()
-        # The slope of the departure is a few hundredths, so each round gains more than a digit.
-        for _ in range(4):
-            apparent = true_signal - self.at(curves, apparent)[0]
+        # Newton's method; a steep departure is not followed all the way, or it could turn back.
+        for _ in range(5):
+            shift, slope = self.at(curves, apparent)
+            apparent = apparent - (apparent + shift - true_signal) / np.maximum(1.0 + slope, 0.4)
         return apparent
 
 
