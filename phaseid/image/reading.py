@@ -164,7 +164,8 @@ def _read_other(path: Path, page: int | None) -> Any:
         with warnings.catch_warnings():
             # Large mosaics are normal here; the size was chosen by the user, not by a stranger.
             warnings.simplefilter("ignore", Image.DecompressionBombWarning)
-            with Image.open(path) as picture:
+            with Image.open(path) as opened:
+                picture: Image.Image = opened
                 pages = int(getattr(picture, "n_frames", 1))
                 if page is not None and not 0 <= page < pages:
                     raise InputError(
