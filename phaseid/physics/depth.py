@@ -13,19 +13,10 @@ from phaseid.physics.conditions import Conditions
 from phaseid.physics.elements import Floats
 from phaseid.physics.range_laws import kanaya_okayama_um
 from phaseid.physics.signals import signal_under
+from phaseid.physics.tables import on_grid, table
 
-# Simulated at 10 and 20 keV, in units of the Kanaya-Okayama range: the depth that 50, 90 and 95 %
-# of the backscattered electrons stay above, and the radius 50 and 90 % leave within.
-_Z = np.array([6.0, 13.0, 26.0, 29.0, 47.0, 79.0])
-_DEPTH = {
-    0.5: np.array([0.16, 0.15, 0.12, 0.12, 0.10, 0.09]),
-    0.9: np.array([0.28, 0.27, 0.24, 0.23, 0.21, 0.20]),
-    0.95: np.array([0.31, 0.30, 0.26, 0.25, 0.24, 0.23]),
-}
-_RADIUS = {
-    0.5: np.array([0.24, 0.22, 0.17, 0.16, 0.13, 0.11]),
-    0.9: np.array([0.50, 0.46, 0.38, 0.38, 0.33, 0.30]),
-}
+SHAPES = ("shallow", "half-sphere", "deep")
+"""Parts of a sphere that reach a quarter, half or the whole of their visible diameter deep."""
 
 
 def electron_range_um(
@@ -49,17 +40,17 @@ def information_depth_um(
     density : array_like
         g/cm3, nan where it is not known.
     energy_keV : array_like
-    share : {0.5, 0.9, 0.95}
+    share : float
+        0.5 to 0.99.
 
     Returns
     -------
     ndarray
         um at normal incidence, nan where the density is nan. A simulated fraction of the electron
-        range, 0.31 for carbon to 0.23 for gold at the default share; the rule of thumb "half the
-        range" is an upper bound.
+        range, 0.32 for carbon to 0.23 for gold at 20 keV and the default share; the rule of thumb
+        "half the range" is an upper bound.
     """
-    fraction = _fraction(mass_fractions, _DEPTH, share)
-    return fraction * kanaya_okayama_um(mass_fractions, density, energy_keV)
+    return _fraction(mass_fractions, density, energy_keV, share, "depth")
 
 
 def lateral_radius_um(
@@ -72,17 +63,15 @@ def lateral_radius_um(
 
     Parameters
     ----------
-    mass_fractions, density, energy_keV
+    mass_fractions, density, energy_keV, share
         As for `information_depth_um`.
-    share : {0.5, 0.9}
 
     Returns
     -------
     ndarray
         um, nan where the density is nan. Pixels closer than this to a boundary are blends.
     """
-    fraction = _fraction(mass_fractions, _RADIUS, share)
-    return fraction * kanaya_okayama_um(mass_fractions, density, energy_keV)
+    return _fraction(mass_fractions, density, energy_keV, share, "radius")
 
 
 def coat_factor(mass_fractions: ArrayLike, conditions: Conditions) -> Floats:
@@ -93,39 +82,150 @@ def coat_factor(mass_fractions: ArrayLike, conditions: Conditions) -> Floats:
 
 
 def feature_fraction(
-    diameter_um: ArrayLike, range_um_feature: ArrayLike, range_um_matrix: ArrayLike
+    diameter_um: ArrayLike,
+    range_um_feature: ArrayLike,
+    range_um_matrix: ArrayLike,
+    *,
+    shape: str = "half-sphere",
+    over_disc: bool = False,
 ) -> Floats:
-    """Share of the signal at the centre of a small feature that comes from the feature.
+    """Share of a small feature's signal that is its own.
 
     Parameters
     ----------
     diameter_um : array_like
         Diameter seen in the image.
     range_um_feature, range_um_matrix : array_like
-        Electron ranges in the two materials.
+        Kanaya-Okayama ranges in the two materials; all three broadcast.
+    shape : {"half-sphere", "shallow", "deep"}
+        How far it reaches below the surface: half of, a quarter of or the whole visible diameter.
+        The first is the middle case of a random section; the other two tell how much the unknown
+        depth matters.
+    over_disc : bool
+        Mean over the whole disc instead of the centre. A region of the image with its rim eroded
+        lies between the two.
 
     Returns
     -------
     ndarray
-        0..1: ``signal = matrix + fraction (feature - matrix)``.
+        f from 0 to 1: ``signal = matrix + f (feature - matrix)``. nan where a range is nan.
+
+    Raises
+    ------
+    InputError
+        For an unknown shape.
 
     Notes
     -----
-    The feature is taken as the lower half of a sphere cut at its equator. Depth and radius that
-    the electrons need are close to 0.3 and 0.4 of the range; the share of paths that stay inside
-    is taken as ``(1 - exp(-(d / a)^2))`` with ``a = 0.45`` mean ranges.
+    Simulated, at 10 keV, for light features in a heavy matrix where the feature has the longer
+    range and heavy ones in a light matrix where it has the shorter; linear in log ratio of the ranges and
+    log diameter over the shorter range. Below a tenth of the range f is in proportion to
+    the diameter, as the chance of a collision inside is.
+    Half a sphere of a heavy material in a light one can be up to a third brighter against its
+    matrix than its bulk, as electrons leave through its flanks; f is cut at 1 all the same, because
+    that depends on a shape below the surface that nobody knows.
     """
+    if shape not in SHAPES:
+        raise InputError(f"There is no feature shape {shape!r}; choose one of {', '.join(SHAPES)}.")
+    simulated = table("features")
     feature = np.asarray(range_um_feature, dtype=np.float64)
     matrix = np.asarray(range_um_matrix, dtype=np.float64)
-    size = np.asarray(diameter_um, dtype=np.float64) / (0.45 * np.sqrt(feature * matrix))
-    share: Floats = 1.0 - np.exp(-(size**2))
-    return share
+    size = np.asarray(diameter_um, dtype=np.float64) / np.minimum(feature, matrix)
+    size, ratio = np.broadcast_arrays(size, feature / matrix)
+    known = np.isfinite(size) & np.isfinite(ratio)
+    smallest = float(simulated["diameter_over_shorter_range"][0])
+    at = [
+        np.log(np.where(known, ratio, 1.0)),
+        np.log(np.maximum(np.where(known, size, 1.0), smallest)),
+    ]
+    axes = [np.log(simulated["ratio"]), np.log(simulated["diameter_over_shorter_range"])]
+    shares = simulated["share"][:, :, SHAPES.index(shape), int(over_disc)]
+    fraction = on_grid(shares, axes, at) * np.minimum(size / smallest, 1.0)
+    return np.where(known, np.clip(fraction, 0.0, 1.0), np.nan)
 
 
-def _fraction(mass_fractions: ArrayLike, table: dict[float, Floats], share: float) -> Floats:
-    if share not in table:
-        shares = ", ".join(f"{known:g}" for known in table)
-        raise InputError(f"A share of {share:g} is not tabulated; choose one of {shares}.")
-    z = mean_atomic_number(mass_fractions)
-    fraction: Floats = np.interp(np.log(z), np.log(_Z), table[share])
+def smallest_feature_um(
+    range_um_feature: ArrayLike,
+    range_um_matrix: ArrayLike,
+    fraction: float = 0.9,
+    *,
+    shape: str = "half-sphere",
+    over_disc: bool = False,
+) -> Floats:
+    """Diameter from which at least `fraction` of a feature's signal is its own.
+
+    Parameters
+    ----------
+    range_um_feature, range_um_matrix : array_like
+    fraction : float
+        0 to 1; 0.9 unless stated.
+    shape, over_disc
+        As for `feature_fraction`.
+
+    Returns
+    -------
+    ndarray
+        um; inf where even a feature of four ranges does not reach the fraction.
+    """
+    feature, matrix = np.broadcast_arrays(
+        np.asarray(range_um_feature, dtype=np.float64),
+        np.asarray(range_um_matrix, dtype=np.float64),
+    )
+    sizes = np.geomspace(0.02, 4.0, 240)
+    shorter = np.minimum(feature, matrix)
+    shares = feature_fraction(
+        sizes * shorter[..., None],
+        feature[..., None],
+        matrix[..., None],
+        shape=shape,
+        over_disc=over_disc,
+    )
+    reached = shares >= fraction
+    first = np.argmax(reached, axis=-1)
+    return np.where(reached.any(axis=-1), sizes[first] * shorter, np.inf)
+
+
+def highest_energy_keV(
+    diameter_um: ArrayLike, range_um_at_20_keV: ArrayLike, fraction: float = 0.9
+) -> Floats:
+    """Beam energy below which a feature of the given size can be judged by its own signal.
+
+    Parameters
+    ----------
+    diameter_um : array_like
+    range_um_at_20_keV : array_like
+        Kanaya-Okayama range in the feature at 20 keV.
+    fraction : float
+        As for `smallest_feature_um`; the matrix is taken to have the same range.
+
+    Returns
+    -------
+    ndarray
+        keV, from the range's growth with the power 1.67 of the energy. Below about 5 keV the
+        prediction itself is not reliable.
+    """
+    needed = float(smallest_feature_um(1.0, 1.0, fraction))
+    wanted = np.asarray(diameter_um, dtype=np.float64) / needed
+    energy: Floats = 20.0 * (wanted / np.asarray(range_um_at_20_keV, dtype=np.float64)) ** (
+        1 / 1.67
+    )
+    return energy
+
+
+def _fraction(
+    mass_fractions: ArrayLike, density: ArrayLike, energy_keV: ArrayLike, share: float, what: str
+) -> Floats:
+    simulated = table("depths")
+    shares = simulated["share"]
+    if not shares[0] <= share <= shares[-1]:
+        raise InputError(
+            f"A share of {share:g} is not tabulated; give one from {shares[0]:g} to {shares[-1]:g}."
+        )
+    full = kanaya_okayama_um(mass_fractions, density, energy_keV)
+    z, energy = np.broadcast_arrays(
+        np.log(mean_atomic_number(mass_fractions)), np.log(np.asarray(energy_keV, dtype=float))
+    )
+    axes = [np.log(simulated["energy_keV"]), np.log(simulated["atomic_number"]), shares]
+    at = [energy, z, np.full(z.shape, share)]
+    fraction: Floats = full * on_grid(simulated[what], axes, at)
     return fraction

@@ -2,13 +2,14 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import ArrayLike
 
-from phaseid.physics.coating import coat_terms, coated
+from phaseid.physics.coating import coated, hidden_share
 from phaseid.physics.coats import Coat
+from phaseid.physics.combining import ByElement, all_combined, combined, ratio
 from phaseid.physics.conditions import Conditions
 from phaseid.physics.detector import Detector
 from phaseid.physics.elemental import (
@@ -18,14 +19,13 @@ from phaseid.physics.elemental import (
     get_model,
     models,
 )
-from phaseid.physics.elements import Floats, as_compositions, atomic_numbers
+from phaseid.physics.elements import Floats, as_compositions
 from phaseid.physics.mixing import DEFAULT_RULE, CompoundRule, defensible_rules, get_rule
 from phaseid.physics.tilting import DEFAULT_TILT_LAW, TiltLaw, tilted_eta
 
 Model = str | BackscatterModel
 Rule = str | CompoundRule
 Member = tuple[str, str]
-ByElement = Callable[[Floats], Floats]
 
 
 def mean_energy_fraction(eta: ArrayLike) -> Floats:
@@ -84,7 +84,7 @@ def eta(
         For a composition of the wrong shape or an unknown name.
     """
     by_element = _eta_of_z(model, energy_keV, tilt_deg, tilt_law)
-    return _combined(as_compositions(mass_fractions), get_rule(rule), energy_keV, by_element)
+    return combined(as_compositions(mass_fractions), get_rule(rule), energy_keV, by_element)
 
 
 def signal(
@@ -122,10 +122,13 @@ def signal(
     InputError
         As for `eta`.
     """
-    chosen = detector or Detector()
-    by_element = _signal_of_z(model, energy_keV, tilt_deg, chosen, tilt_law)
-    bare = _combined(as_compositions(mass_fractions), get_rule(rule), energy_keV, by_element)
-    return coated(bare, _terms(coat, energy_keV, tilt_deg, chosen, model, tilt_law))
+    values: Floats = _signals(
+        as_compositions(mass_fractions),
+        (get_model(model),),
+        (get_rule(rule),),
+        _View(energy_keV, tilt_deg, detector or Detector(), coat, tilt_law),
+    )[0, 0]
+    return values
 
 
 def signal_ensemble(
@@ -154,25 +157,28 @@ def signal_ensemble(
     members : list of (model name, rule name)
         In the order of the first axis, rules varying fastest.
     """
-    chosen = detector or Detector()
     composition = as_compositions(mass_fractions)
     of_models = tuple(get_model(m) for m in elemental) if elemental is not None else models()
     of_rules = tuple(get_rule(r) for r in rules) if rules is not None else defensible_rules()
-    functions = [_signal_of_z(m, energy_keV, tilt_deg, chosen, DEFAULT_TILT_LAW) for m in of_models]
-    values = _all_combined(composition, of_rules, energy_keV, functions)
-    for index, m in enumerate(of_models):
-        terms = _terms(coat, energy_keV, tilt_deg, chosen, m, DEFAULT_TILT_LAW)
-        values[index] = coated(values[index], terms)
+    view = _View(energy_keV, tilt_deg, detector or Detector(), coat, DEFAULT_TILT_LAW)
+    values = _signals(composition, of_models, of_rules, view)
     members = [(m.name, r.name) for m in of_models for r in of_rules]
     return values.reshape(len(members), *composition.shape[:-1]), members
 
 
 def signal_of_atomic_number(z: ArrayLike, conditions: Conditions, model: Model) -> Floats:
     """Signal of elements, real or between two, by `model` under `conditions`; shape of `z`."""
+    view = _View(
+        conditions.energy_keV,
+        conditions.tilt_deg,
+        conditions.detector,
+        conditions.coat,
+        DEFAULT_TILT_LAW,
+    )
     number = np.asarray(z, dtype=np.float64)
-    energy, tilt, detector = conditions.energy_keV, conditions.tilt_deg, conditions.detector
-    bare = _signal_of_z(model, energy, tilt, detector, DEFAULT_TILT_LAW)(number)
-    return coated(bare, _terms(conditions.coat, energy, tilt, detector, model, DEFAULT_TILT_LAW))
+    by_quantity = np.stack([of_z(number) for of_z in view.of_z(model)])
+    values: Floats = view.through_coat(by_quantity[:, None, None], (model,))[0, 0]
+    return values
 
 
 def signal_under(mass_fractions: ArrayLike, conditions: Conditions) -> Floats:
@@ -194,7 +200,7 @@ def eta_ensemble(
     """As `signal_ensemble`, for the backscatter coefficient."""
     composition = as_compositions(mass_fractions)
     functions = [_eta_of_z(m, energy_keV, tilt_deg, DEFAULT_TILT_LAW) for m in models()]
-    values = _all_combined(composition, defensible_rules(), energy_keV, functions)
+    values = all_combined(composition, defensible_rules(), energy_keV, functions)
     members = [(m.name, r.name) for m in models() for r in defensible_rules()]
     return values.reshape(len(members), *composition.shape[:-1]), members
 
@@ -221,7 +227,7 @@ def mean_energy_keV(
     arguments = (mass_fractions, energy_keV, tilt_deg, model, rule)
     carried = signal(*arguments, detector=everything)
     back = eta(*arguments)
-    return energy_keV * _ratio(carried, back)
+    return energy_keV * ratio(carried, back)
 
 
 def _eta_of_z(
@@ -230,69 +236,68 @@ def _eta_of_z(
     return lambda z: tilted_eta(elemental_eta(z, energy_keV, model), z, tilt_deg, tilt_law)
 
 
-def _signal_of_z(
-    model: Model,
-    energy_keV: float,
-    tilt_deg: float,
-    detector: Detector,
-    tilt_law: str | TiltLaw,
-) -> ByElement:
-    eta_of_z = _eta_of_z(model, energy_keV, tilt_deg, tilt_law)
+@dataclass(frozen=True)
+class _View:
+    """How the sample is looked at; what turns elements into signals."""
 
-    def signal_of_z(z: Floats) -> Floats:
-        back = eta_of_z(z)
-        return back * detector.mean_response(mean_energy_fraction(back), energy_keV)
+    energy_keV: float
+    tilt_deg: float
+    detector: Detector
+    coat: Coat | None
+    tilt_law: str | TiltLaw
 
-    return signal_of_z
+    def of_z(self, model: Model) -> list[ByElement]:
+        """Signal by atomic number; under a coat also eta and the energy carried."""
+        eta_of_z = _eta_of_z(model, self.energy_keV, self.tilt_deg, self.tilt_law)
+
+        def signal_of_z(z: Floats) -> Floats:
+            back = eta_of_z(z)
+            return back * self.detector.mean_response(mean_energy_fraction(back), self.energy_keV)
+
+        def carried_of_z(z: Floats) -> Floats:
+            back = eta_of_z(z)
+            return back * mean_energy_fraction(back)
+
+        return [signal_of_z] if self.coat is None else [signal_of_z, eta_of_z, carried_of_z]
+
+    def through_coat(self, by_quantity: Floats, of_models: tuple[Model, ...]) -> Floats:
+        """Signals of shape (models, rules, ...) from (1 or 3 quantities, models, rules, ...)."""
+        bare: Floats = by_quantity[0]
+        if self.coat is None:
+            return bare
+        hidden = hidden_share(self.coat, self.energy_keV, self.tilt_deg)
+        through = np.empty_like(bare)
+        for row, model in enumerate(of_models):
+            eta_0, carried_0 = by_quantity[1, row], by_quantity[2, row]
+            coat_eta, coat_carried = self._bulk_coat(self.coat, model)
+            eta_1, carried_1 = coated(eta_0, carried_0, coat_eta, coat_carried, hidden)
+            # As a ratio, so that a vanishing coat leaves the bare signal exactly.
+            change = ratio(self._answer(eta_1, carried_1), self._answer(eta_0, carried_0))
+            through[row] = bare[row] * change
+        return through
+
+    def _bulk_coat(self, coat: Coat, model: Model) -> tuple[float, float]:
+        rule = get_rule(DEFAULT_RULE)
+        _, eta_of_z, carried_of_z = self.of_z(model)
+        back = combined(coat.mass_fractions, rule, self.energy_keV, eta_of_z)
+        carried = combined(coat.mass_fractions, rule, self.energy_keV, carried_of_z)
+        return float(back), float(carried)
+
+    def _answer(self, back: Floats, carried: Floats) -> Floats:
+        return back * self.detector.mean_response(ratio(carried, back), self.energy_keV)
 
 
-def _combined(
-    composition: Floats, rule: CompoundRule, energy_keV: float, of_z: ByElement
-) -> Floats:
-    values: Floats = _all_combined(composition, (rule,), energy_keV, [of_z])[0, 0]
-    return values
-
-
-def _all_combined(
+def _signals(
     composition: Floats,
-    rules: tuple[CompoundRule, ...],
-    energy_keV: float,
-    functions: list[ByElement],
+    of_models: tuple[BackscatterModel, ...],
+    of_rules: tuple[CompoundRule, ...],
+    view: _View,
 ) -> Floats:
-    """Values of shape (functions, rules, ...)."""
-    shape = composition.shape[:-1]
-    composition = composition.reshape(-1, composition.shape[-1])
-    values = np.zeros((len(functions), len(rules), len(composition)))
-    by_element = np.stack([of_z(atomic_numbers()) for of_z in functions])
-    for column, rule in enumerate(rules):
-        if rule.weights is not None:
-            weight = rule.weights(energy_keV)
-            above = (composition @ (weight * by_element).T).T
-            values[:, column] = _ratio(above, composition @ weight)
-        elif rule.mean is not None:
-            filled = composition.sum(axis=-1) > 0
-            mean = rule.mean(composition[filled])
-            for row, of_z in enumerate(functions):
-                values[row, column, filled] = of_z(mean)
-    return values.reshape(len(functions), len(rules), *shape)
-
-
-def _ratio(above: Floats, below: Floats) -> Floats:
-    below = np.broadcast_to(below, above.shape)
-    return np.divide(above, below, out=np.zeros_like(above), where=below > 0)
-
-
-def _terms(
-    coat: Coat | None,
-    energy_keV: float,
-    tilt_deg: float,
-    detector: Detector,
-    model: Model,
-    tilt_law: str | TiltLaw,
-) -> tuple[float, float] | None:
-    if coat is None:
-        return None
-    bulk = signal(
-        coat.mass_fractions, energy_keV, tilt_deg, model, detector=detector, tilt_law=tilt_law
+    """Signals of shape (models, rules, ...)."""
+    functions = [view.of_z(model) for model in of_models]
+    # Quantity by quantity, so that the first axis can be split again.
+    in_turn = [by_model[q] for q in range(len(functions[0])) for by_model in functions]
+    values = all_combined(composition, of_rules, view.energy_keV, in_turn)
+    return view.through_coat(
+        values.reshape(len(functions[0]), len(of_models), *values.shape[1:]), of_models
     )
-    return coat_terms(coat, energy_keV, tilt_deg, detector, float(bulk))

@@ -80,9 +80,9 @@ def run_block(
     while len(x):
         node = np.sqrt(energy)
         node *= per_root
-        index = np.minimum(node.astype(np.intp), NODES - 1)
-        at = index if region is None else index + region * NODES
-        flight = np.log(1 - rng.random(len(x), dtype=_F))
+        index: NDArray[np.intp] = np.minimum(node.astype(np.intp), NODES - 1)
+        at = index if region is None else index + region.astype(np.intp) * NODES
+        flight: Floats32 = np.log(1 - rng.random(len(x), dtype=_F))
         flight *= -tables.mean_free_path[at]
         crossing: NDArray[np.bool_] | None = None
         if several:
@@ -100,7 +100,7 @@ def run_block(
             left_with = energy[leaving] - way * loss[leaving]
             rows = [left_with, ux[leaving], uy[leaving], uz[leaving]]
             rows += [x[leaving] + ux[leaving] * way, y[leaving] + uy[leaving] * way]
-            rows += [deepest[leaving]]
+            rows.append(deepest[leaving])
             found.append(np.stack(rows)[:, left_with > cutoff])
 
         x += ux * flight

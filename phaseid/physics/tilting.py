@@ -9,8 +9,10 @@ import numpy as np
 
 from phaseid.errors import InputError
 from phaseid.physics.elements import Floats
+from phaseid.physics.tables import on_grid, table
 
-DEFAULT_TILT_LAW = "arnal-1969"
+DEFAULT_TILT_LAW = "simulated"
+"""Arnal's law, the only published one whose coefficients are confirmed, is 11 % off for aluminium."""
 
 
 @dataclass(frozen=True)
@@ -35,6 +37,14 @@ class TiltLaw:
 def tilt_laws() -> tuple[TiltLaw, ...]:
     """Every tilt law that ships."""
     return (
+        TiltLaw(
+            "simulated",
+            "eta(phi) = eta(0)^p(Z, phi)",
+            "single-scattering Monte Carlo, see phaseid.physics.trajectories",
+            "Mean of 10 and 20 keV, C to U, up to 80 degrees; p is interpolated.",
+            "simulated",
+            _simulated,
+        ),
         TiltLaw(
             "arnal-1969",
             "eta(phi) / eta(0) = ((1 + cos phi) / 2)^(-9 / sqrt Z)",
@@ -95,6 +105,15 @@ def tilted_eta(
         return eta_0
     tilted: Floats = np.minimum(get_tilt_law(law).tilted(eta_0, z, tilt_deg), 1.0)
     return tilted
+
+
+def _simulated(eta_0: Floats, z: Floats, tilt_deg: float) -> Floats:
+    simulated = table("tilts")
+    axes = [np.log(simulated["atomic_number"]), simulated["tilt_deg"]]
+    number = np.log(np.maximum(z, 1.0))
+    exponent = on_grid(simulated["exponent"], axes, [number, np.full(np.shape(z), tilt_deg)])
+    # An element that sends nothing back (hydrogen) does not start to when tilted.
+    return np.where(eta_0 > 0, np.maximum(eta_0, 1e-12) ** exponent, 0.0)
 
 
 def _arnal_ratio(eta_0: Floats, z: Floats, tilt_deg: float) -> Floats:
