@@ -60,6 +60,7 @@ def mean_atomic_number(
     Returns
     -------
     ndarray of shape (...)
+        nan for an empty composition.
 
     Raises
     ------
@@ -123,7 +124,9 @@ def averaging_methods() -> tuple[AveragingMethod, ...]:
 
 
 def _ratio(mass_fractions: Floats, above: Floats, below: Floats) -> Floats:
-    ratio: Floats = (mass_fractions @ above) / (mass_fractions @ below)
+    numerator, denominator = mass_fractions @ above, mass_fractions @ below
+    unknown = np.full(np.shape(denominator), np.nan)
+    ratio: Floats = np.divide(numerator, denominator, out=unknown, where=denominator > 0)
     return ratio
 
 

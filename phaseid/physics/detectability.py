@@ -9,6 +9,7 @@ from numpy.typing import ArrayLike, NDArray
 
 from phaseid.physics.conditions import Conditions
 from phaseid.physics.depth import information_depth_um, lateral_radius_um
+from phaseid.physics.detector import Detector
 from phaseid.physics.elements import Floats, as_compositions
 from phaseid.physics.model_error import SIGNAL_SHIFT, ModelError, model_error
 from phaseid.physics.signals import signal_under
@@ -16,6 +17,8 @@ from phaseid.physics.signals import signal_under
 ELEMENTARY_CHARGE_C = 1.602176634e-19
 ROSE_RATIO = 5.0
 """Signal difference over noise that the eye needs to see a feature (Rose 1948)."""
+
+_ANY = Detector("ideal")
 
 
 def contrast(first: ArrayLike, second: ArrayLike) -> Floats:
@@ -188,9 +191,10 @@ def separate(
     model_ratio = np.full((len(energies), len(tilts), count, count), np.nan)
     for e, energy in enumerate(energies):
         for t, tilt in enumerate(tilts):
+            bounds = replace(base, energy_keV=float(energy), tilt_deg=float(tilt), detector=_ANY)
             if base.detector.lowest_energy_keV >= energy:
                 continue
-            under = replace(base, energy_keV=float(energy), tilt_deg=float(tilt))
+            under = replace(bounds, detector=base.detector)
             signal[e, t] = signal_under(composition, under)
             model_ratio[e, t] = _model_ratio(signal[e, t], model_error(composition, under))
     pair = contrast(signal[..., :, None], signal[..., None, :])

@@ -24,7 +24,8 @@ def kanaya_okayama_um(
     -------
     ndarray
         Range in um: ``0.0276 A E^1.67 / (Z^0.89 rho)`` for an element, and for a compound
-        ``1/R = sum c_i/R_i`` with its own density. nan where the density is nan.
+        ``1/R = sum c_i/R_i`` with its own density. nan where the density is not known or not
+        positive, and for an empty composition.
 
     References
     ----------
@@ -32,5 +33,7 @@ def kanaya_okayama_um(
     """
     inverse = as_compositions(mass_fractions) @ (atomic_numbers() ** 0.89 / atomic_masses())
     energy = np.asarray(energy_keV, dtype=np.float64)
-    full_range: Floats = 0.0276 * energy**1.67 / (inverse * np.asarray(density, dtype=np.float64))
+    stopping = inverse * np.asarray(density, dtype=np.float64)
+    # An empty composition has no range, rather than an infinite one.
+    full_range: Floats = 0.0276 * energy**1.67 / np.where(stopping > 0, stopping, np.nan)
     return full_range
