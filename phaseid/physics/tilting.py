@@ -6,6 +6,7 @@ from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import ArrayLike
 
 from phaseid.errors import InputError
 from phaseid.physics.elements import Floats
@@ -31,7 +32,7 @@ class TiltLaw:
     source: str
     note: str
     status: str
-    tilted: Callable[[Floats, Floats, float], Floats]
+    tilted: Callable[[Floats, Floats, ArrayLike], Floats]
 
 
 def tilt_laws() -> tuple[TiltLaw, ...]:
@@ -83,7 +84,7 @@ def get_tilt_law(law: str | TiltLaw) -> TiltLaw:
 
 
 def tilted_eta(
-    eta_0: Floats, z: Floats, tilt_deg: float, law: str | TiltLaw = DEFAULT_TILT_LAW
+    eta_0: Floats, z: Floats, tilt_deg: ArrayLike, law: str | TiltLaw = DEFAULT_TILT_LAW
 ) -> Floats:
     """Backscatter coefficient of elements on a tilted surface.
 
@@ -93,35 +94,36 @@ def tilted_eta(
         At normal incidence.
     z : ndarray
         Atomic numbers, of the shape of `eta_0`.
-    tilt_deg : float
-        Angle between beam and surface normal, 0 to 85.
+    tilt_deg : array_like
+        Angle between beam and surface normal, 0 to 80; broadcast.
     law : str or TiltLaw
 
     Returns
     -------
-    ndarray of the shape of `eta_0`, at most 1.
+    ndarray of the broadcast shape, at most 1.
     """
-    if tilt_deg == 0:
+    if np.ndim(tilt_deg) == 0 and tilt_deg == 0:
         return eta_0
-    tilted: Floats = np.minimum(get_tilt_law(law).tilted(eta_0, z, tilt_deg), 1.0)
+    degrees = np.asarray(tilt_deg, dtype=np.float64)
+    tilted: Floats = np.minimum(get_tilt_law(law).tilted(eta_0, z, degrees), 1.0)
     return tilted
 
 
-def _simulated(eta_0: Floats, z: Floats, tilt_deg: float) -> Floats:
+def _simulated(eta_0: Floats, z: Floats, tilt_deg: ArrayLike) -> Floats:
     simulated = table("tilts")
     axes = [np.log(simulated["atomic_number"]), simulated["tilt_deg"]]
-    number = np.log(np.maximum(z, 1.0))
-    exponent = on_grid(simulated["exponent"], axes, [number, np.full(np.shape(z), tilt_deg)])
+    at = np.broadcast_arrays(np.log(np.maximum(z, 1.0)), np.asarray(tilt_deg, dtype=np.float64))
+    exponent = on_grid(simulated["exponent"], axes, list(at))
     # An element that sends nothing back (hydrogen) does not start to when tilted.
     return np.where(eta_0 > 0, np.maximum(eta_0, 1e-12) ** exponent, 0.0)
 
 
-def _arnal_ratio(eta_0: Floats, z: Floats, tilt_deg: float) -> Floats:
+def _arnal_ratio(eta_0: Floats, z: Floats, tilt_deg: ArrayLike) -> Floats:
     cosine = np.cos(np.radians(tilt_deg))
     value: Floats = eta_0 * ((1.0 + cosine) / 2.0) ** (-9.0 / np.sqrt(np.maximum(z, 1.0)))
     return value
 
 
-def _drescher(eta_0: Floats, z: Floats, tilt_deg: float) -> Floats:
+def _drescher(eta_0: Floats, z: Floats, tilt_deg: ArrayLike) -> Floats:
     value: Floats = 0.89 * (eta_0 / 0.89) ** np.cos(np.radians(tilt_deg))
     return value
