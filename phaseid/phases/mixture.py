@@ -1,0 +1,130 @@
+"""Mixtures by weight or atoms: ``wt% Fe74 Cr18 Ni8``, ``wt% SiO2 68-75 Na2O 12-16``, ``at% Ni Al25``."""
+
+from __future__ import annotations
+
+import re
+
+from phaseid.phases.amounts import Amount, FormulaError, Values, arithmetic, fixed, variable
+from phaseid.phases.reader import Amounts, Reading, read_formula
+from phaseid.physics.elements import SYMBOLS, atomic_masses
+
+_START = re.compile(r"^\s*(wt|at|mass|mol)\.?\s*%\s*", re.IGNORECASE)
+_AMOUNT = r"(?:\{[^}]*\}|\d+(?:\.\d+)?(?:\s*[-–]\s*\d+(?:\.\d+)?)?|bal\.?|balance)"
+_END = r"(?=[\s,;]|$)"
+# A compound is set off from its amount by a space, or the digits could not be told apart; a symbol need
+# not be.
+_ENTRY = re.compile(
+    rf"([A-Z][A-Za-z0-9()\[\].·]*)\s+({_AMOUNT}){_END}|([A-Z][a-z]?)({_AMOUNT}){_END}"
+)
+_BALANCE = ("bal", "bal.", "balance")
+
+
+def is_mixture(text: str) -> bool:
+    """Whether a text is written as a mixture."""
+    return bool(_START.match(text))
+
+
+def read_mixture(text: str) -> Reading:
+    """Read a mixture; amounts are normalised to 100 %.
+
+    Raises
+    ------
+    FormulaError
+    """
+    start = _START.match(text)
+    assert start is not None
+    by_mass = start[1].lower() in ("wt", "mass")
+    reader = _Mixture(text)
+    at = start.end()
+    body = text.rstrip()
+    while at < len(body):
+        gap = re.match(r"[\s,;]+", body[at:])
+        if gap:
+            at += gap.end()
+            continue
+        entry = _ENTRY.match(body, at)
+        if entry is None:
+            word = body[at:].split()[0]
+            raise FormulaError(
+                f"{text!r}, character {at + 1}: {word!r} is not a symbol or compound with an amount; "
+                "write for example wt% Fe74 Cr18 Ni8 or wt% SiO2 72 Na2O 14."
+            )
+        reader.add(entry[1] or entry[3], entry[2] or entry[4], entry.start())
+        at = entry.end()
+    return reader.finish(by_mass)
+
+
+class _Mixture:
+    def __init__(self, text: str) -> None:
+        self.text = text
+        self.entries: list[tuple[Amounts, Amount | None]] = []
+        self.elements: set[str] = set()
+        self.variables: set[str] = set()
+        self.ranges: dict[str, tuple[float, float]] = {}
+
+    def add(self, name: str, amount: str, at: int) -> None:
+        where = f"{self.text!r}, character {at + 1}"
+        try:
+            part = read_formula(name)
+        except FormulaError:
+            raise FormulaError(
+                f"{where}: {name!r} is no element or compound; check its spelling, and put a space "
+                "between a compound and its amount."
+            ) from None
+        if part.variables or part.ranges or part.splits:
+            raise FormulaError(
+                f"{where}: {name!r} has a range of its own; give the parts of a mixture one by one."
+            )
+        self.elements |= part.elements
+        self.entries.append((part.amounts, self._amount(amount, where)))
+
+    def _amount(self, text: str, where: str) -> Amount | None:
+        if text in _BALANCE:
+            return None
+        if text.startswith("{"):
+            amount = arithmetic(text[1:-1], where)
+            self.variables |= amount.variables
+            return amount
+        ends = [float(part) for part in re.split(r"\s*[-–]\s*", text)]
+        if len(ends) == 1:
+            return fixed(ends[0])
+        name = f"range {len(self.ranges) + 1}"
+        self.ranges[name] = (min(ends), max(ends))
+        return variable(name)
+
+    def finish(self, by_mass: bool) -> Reading:
+        if not self.entries:
+            raise FormulaError(f"{self.text!r} names nothing; write for example wt% Fe74 Cr18 Ni8.")
+        if sum(amount is None for _, amount in self.entries) > 1:
+            raise FormulaError(f"{self.text!r} has two balances; give all amounts but one.")
+        return Reading(
+            self._amounts(by_mass),
+            frozenset(self.elements),
+            self.variables - set(self.ranges),
+            self.ranges,
+            by_mass=by_mass,
+        )
+
+    def _amounts(self, by_mass: bool) -> Amounts:
+        entries, masses, text = self.entries, atomic_masses(), self.text
+
+        def total(values: Values) -> dict[str, float]:
+            shares = [None if a is None else a.value(values) for _, a in entries]
+            left = 100.0 - sum(s for s in shares if s is not None)
+            if None in shares and left < 0:
+                raise FormulaError(
+                    f"{text!r} leaves a balance of {left:.4g} %; reduce the amounts."
+                )
+            found: dict[str, float] = {}
+            for (part, _), share in zip(entries, shares, strict=True):
+                atoms = part(values)
+                weighed = {
+                    s: n * (masses[SYMBOLS.index(s)] if by_mass else 1.0) for s, n in atoms.items()
+                }
+                whole = sum(weighed.values()) if by_mass else 1.0
+                for symbol, amount in weighed.items():
+                    part_share = (left if share is None else share) * amount / whole
+                    found[symbol] = found.get(symbol, 0.0) + part_share
+            return found
+
+        return total
