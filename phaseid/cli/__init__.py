@@ -1,0 +1,5 @@
+"""The command line; thin."""
+
+from phaseid.cli.main import main
+
+__all__ = ["main"]

@@ -1,0 +1,145 @@
+"""The candidates at given conditions, with what is shown about them."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from phaseid.errors import InputError
+from phaseid.inference.candidates import CandidateSet
+from phaseid.inference.departure import Departure
+from phaseid.physics.conditions import Conditions
+from phaseid.session.answers import Candidate
+
+Floats = NDArray[np.float64]
+
+# Holes, cracks and pores are candidates of every dark cluster. How much signal comes out of one depends
+# on its depth; common practice: near nothing up to a third of quartz.
+VOID = "Pore, crack or hole"
+VOID_SIGNALS = (0.002, 0.008, 0.016, 0.028)
+VOID_SHARES = (0.4, 0.3, 0.2, 0.1)
+VOID_SD = 0.005
+# Density of defects, orientation, trace elements: what differs between two grains of one phase, as a
+# share of the signal. Common practice.
+GRAIN_SD = 0.01
+
+
+@dataclass(frozen=True)
+class Shown:
+    """What tables say about one phase."""
+
+    name: str
+    formula: str
+    database: str
+    mean_atomic_number: float
+    eta: float
+    hazard: str | None
+    note: str | None
+    structure: str
+    range_um: float
+
+
+@dataclass(frozen=True)
+class Candidates:
+    """All phases at given conditions.
+
+    Attributes
+    ----------
+    conditions : Conditions
+    set : CandidateSet
+        P phases in R rows.
+    departure : Departure
+        The smooth part of the model's error.
+    visible : ndarray of shape (R, 103)
+        Probability that each element is reported in a spectrum.
+    variable : ndarray of bool, shape (P,)
+        Phases with a range of compositions.
+    shown : tuple of Shown
+    lookup : mapping of str to int
+        Names, other names and formulas, folded, to phase index.
+    """
+
+    conditions: Conditions
+    set: CandidateSet
+    departure: Departure
+    visible: Floats
+    variable: NDArray[np.bool_]
+    shown: tuple[Shown, ...]
+    lookup: Mapping[str, int]
+
+    def index(self, text: str) -> int:
+        """Index of a phase by name, other name or formula.
+
+        Raises
+        ------
+        InputError
+            If there is none, with the nearest names.
+        """
+        found = self.lookup.get(fold(text))
+        if found is not None:
+            return found
+        import difflib
+
+        names = [s.name for s in self.shown]
+        by_fold = {fold(n): n for n in names}
+        near = difflib.get_close_matches(fold(text), by_fold, n=3, cutoff=0.6)
+        hint = f" Did you mean {', '.join(by_fold[n] for n in near)}?" if near else ""
+        raise InputError(
+            f"No phase is called {text!r}; see 'phaseid database list', or give a formula.{hint}"
+        )
+
+    def rows_of(self, phase: int) -> tuple[Floats, Floats, Floats]:
+        """Signals, own errors and shares of a phase's composition variants."""
+        rows = np.flatnonzero(self.set.phase == phase)
+        return self.set.signal[rows], self.set.own_sd[rows], self.set.share[rows]
+
+    def describe(
+        self,
+        phase: int,
+        predicted_grey: float,
+        predicted_grey_sd: float,
+        probability: float,
+        group: int,
+        listed: bool,
+    ) -> Candidate:
+        """A candidate as it is shown."""
+        shown = self.shown[phase]
+        return Candidate(
+            phase,
+            shown.name,
+            shown.formula,
+            shown.database,
+            shown.mean_atomic_number,
+            shown.eta,
+            float(self.set.mean_signal[phase]),
+            predicted_grey,
+            predicted_grey_sd,
+            probability,
+            group,
+            shown.hazard,
+            shown.note,
+            listed,
+        )
+
+
+def fold(text: str) -> str:
+    """Spelling that names and formulas are compared in."""
+    return "".join(text.split()).casefold()
+
+
+def void_shown() -> Shown:
+    """What tables say about a hole."""
+    return Shown(
+        VOID,
+        "no material",
+        "built in",
+        0.0,
+        0.0,
+        None,
+        "Grey depends on its depth.",
+        "no structure",
+        np.nan,
+    )
