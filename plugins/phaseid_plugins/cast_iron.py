@@ -1,0 +1,33 @@
+"""Cast irons."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+from phaseid.hooks import hookimpl
+from phaseid.phases.contexts import Context
+
+CONTEXTS = (
+    Context("cast-iron", "Cast iron", "Iron with more carbon than austenite can hold."),
+    Context(
+        "cast-iron/grey",
+        "Grey cast iron",
+        "Flake graphite in pearlite or ferrite, steadite, manganese sulphide.",
+    ),
+    Context(
+        "cast-iron/ductile",
+        "Ductile cast iron",
+        "Spheroidal graphite with magnesium and rare-earth nuclei.",
+    ),
+    Context("cast-iron/white", "White cast iron", "Ledeburite: cementite instead of graphite."),
+    Context(
+        "cast-iron/high-chromium",
+        "High-chromium cast iron",
+        "M7C3 carbides in martensite or austenite.",
+    ),
+)
+
+
+@hookimpl
+def register_contexts() -> Sequence[Context]:
+    return CONTEXTS

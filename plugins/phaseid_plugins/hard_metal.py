@@ -1,0 +1,37 @@
+"""Hard metals and cermets."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+from phaseid.hooks import hookimpl
+from phaseid.phases.contexts import Coexistence, Context
+
+CONTEXTS = (
+    Context("hard-metal", "Hard metal", "Carbides in a metallic binder."),
+    Context(
+        "hard-metal/wc-co",
+        "WC-Co hard metal",
+        "Tungsten carbide with cobalt; eta phase when carbon is short, graphite when it is in excess.",
+    ),
+    Context("hard-metal/cermet", "Cermet", "Titanium carbonitride with nickel or cobalt."),
+)
+
+COEXISTENCE = (
+    Coexistence(
+        ("Eta carbide (Co,W)6C", "Eta phase (W,Co)6C", "Eta carbide M6C (hard metal)"),
+        ("Graphite",),
+        0.05,
+        "Eta carbide needs too little carbon, graphite too much (phase diagram W-C-Co); common practice in hard-metal control.",
+    ),
+)
+
+
+@hookimpl
+def register_contexts() -> Sequence[Context]:
+    return CONTEXTS
+
+
+@hookimpl
+def register_coexistence() -> Sequence[Coexistence]:
+    return COEXISTENCE

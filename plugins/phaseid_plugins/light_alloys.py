@@ -1,0 +1,70 @@
+"""Aluminium, magnesium, titanium and zirconium alloys."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+from phaseid.hooks import hookimpl
+from phaseid.phases.contexts import Context
+
+CONTEXTS = (
+    Context("aluminium-alloy", "Aluminium alloy", "Aluminium matrix with intermetallics."),
+    Context(
+        "aluminium-alloy/cast",
+        "Cast aluminium alloy",
+        "Silicon eutectic with iron, copper and magnesium phases.",
+    ),
+    Context(
+        "aluminium-alloy/1xxx",
+        "1xxx aluminium",
+        "Nearly pure aluminium with iron and silicon phases.",
+    ),
+    Context(
+        "aluminium-alloy/2xxx", "2xxx aluminium", "Aluminium-copper: theta, S phase, Al7Cu2Fe."
+    ),
+    Context(
+        "aluminium-alloy/3xxx",
+        "3xxx aluminium",
+        "Aluminium-manganese: Al6(Mn,Fe), alpha-Al(Mn,Fe)Si.",
+    ),
+    Context(
+        "aluminium-alloy/5xxx",
+        "5xxx aluminium",
+        "Aluminium-magnesium: beta phase, Mg2Si, Al6(Mn,Fe).",
+    ),
+    Context(
+        "aluminium-alloy/6xxx", "6xxx aluminium", "Aluminium-magnesium-silicon: Mg2Si, beta-AlFeSi."
+    ),
+    Context(
+        "aluminium-alloy/7xxx",
+        "7xxx aluminium",
+        "Aluminium-zinc-magnesium: eta phase, Al7Cu2Fe, S phase.",
+    ),
+    Context(
+        "aluminium-alloy/8xxx", "8xxx aluminium", "Aluminium-iron and aluminium-lithium alloys."
+    ),
+    Context(
+        "magnesium-alloy", "Magnesium alloy", "Magnesium matrix with Mg17Al12 and manganese phases."
+    ),
+    Context(
+        "magnesium-alloy/rare-earth",
+        "Magnesium rare-earth alloy",
+        "Bright rare-earth intermetallics.",
+    ),
+    Context(
+        "titanium-alloy",
+        "Titanium alloy",
+        "Alpha and beta titanium, borides, silicides, hard alpha.",
+    ),
+    Context(
+        "titanium-alloy/aluminide", "Titanium aluminide", "Gamma and alpha-2 with beta and borides."
+    ),
+    Context(
+        "zirconium-alloy", "Zirconium alloy", "Zirconium with hydrides and second-phase particles."
+    ),
+)
+
+
+@hookimpl
+def register_contexts() -> Sequence[Context]:
+    return CONTEXTS
