@@ -112,6 +112,10 @@ class PluginHost:
         self._origin[name] = origin
         self._problem(name, "loading", _said(error))
 
+    def report(self, plugin: str, moment: str, message: str) -> None:
+        """Note a fault that was found in what a plugin gave."""
+        self._problem(plugin, moment, message)
+
     def _problem(self, plugin: str, moment: str, message: str) -> None:
         problem = Problem(plugin, moment, message)
         if problem not in self.problems:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -68,7 +69,7 @@ def predicted_greys(ranking: Ranking, phases: Ints, most: int = 1500) -> tuple[F
     return means, sds
 
 
-def place(ranking: Ranking, cluster: int, top: int) -> Placing:
+def place(ranking: Ranking, cluster: int, top: int, also: Sequence[int] = ()) -> Placing:
     """Place the `top` most probable candidates of a cluster and group the inseparable ones.
 
     Two candidates are one group when their expected signals, given this cluster, differ by less than
@@ -80,6 +81,8 @@ def place(ranking: Ranking, cluster: int, top: int) -> Placing:
     ranking : Ranking
     cluster : int
     top : int
+    also : sequence of int
+        Phases to place whatever their probability.
 
     Returns
     -------
@@ -88,7 +91,9 @@ def place(ranking: Ranking, cluster: int, top: int) -> Placing:
     question = ranking.question
     candidates = question.candidates
     probability = ranking.probability[cluster]
-    phases = _best(probability, top)
+    best = _best(probability, top)
+    more = [p for p in dict.fromkeys(also) if p not in best]
+    phases = np.concatenate([best, np.array(more, dtype=np.intp)])
     gain = float(ranking.particles.mean_sd(ranking.particles.gain)[0])
     signal = _conditional_signal(ranking, cluster, phases)
     own = np.sqrt(candidates.by_phase(candidates.share * candidates.own_sd**2))[phases]

@@ -41,7 +41,9 @@ def document(
     clusters = analysis.of_image(index)
     scale = analysis.scale
     row = analysis.images.index(index)
-    first = {c.observation: c.id for c in reversed(clusters) if c.observation is not None}
+    first: dict[int | None, int] = {
+        c.observation: c.id for c in reversed(clusters) if c.observation is not None
+    }
     return {
         "schema": SCHEMA,
         "image": {

@@ -117,8 +117,7 @@ def _clusters(
 def _axis(axes: Axes, clustering: Clustering, clusters: Sequence[Mapping[str, Any]]) -> None:
     """Measured greys above the line, predicted greys of the leading candidates below it."""
     values, counts = clustering.histogram
-    values, counts = np.asarray(values, dtype=float), np.asarray(counts, dtype=float)
-    bins = _rebinned(values, counts)
+    bins = _rebinned(np.asarray(values, dtype=float), np.asarray(counts, dtype=float))
     top = float(np.sqrt(bins[1].max())) or 1.0
     axes.fill_between(bins[0], np.sqrt(bins[1]) / top, color="0.8", step="mid", linewidth=0)
     for n, cluster in enumerate(clusters):
@@ -151,7 +150,7 @@ def _axis(axes: Axes, clustering: Clustering, clusters: Sequence[Mapping[str, An
 
 
 def _candidates_below(axes: Axes, clusters: Sequence[Mapping[str, Any]]) -> float:
-    level = 0
+    level = 0.0
     for n, cluster in enumerate(clusters):
         shown = [c for c in cluster["candidates"] if c["predicted_grey"] is not None]
         for candidate in shown[:CANDIDATES_SHOWN]:
@@ -170,7 +169,7 @@ def _candidates_below(axes: Axes, clusters: Sequence[Mapping[str, Any]]) -> floa
                 va="center",
                 fontsize=7,
             )
-        level += 0.4 if shown else 0
+        level += 0.4 if shown else 0.0
     return 0.075 * (level + 1)
 
 

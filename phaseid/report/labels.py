@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import io
 import json
+from typing import Any
 
 from phaseid.image.clustering import Clustering
 
@@ -30,7 +31,7 @@ def label_tiff(clustering: Clustering, pixel_size_nm: float | None) -> bytes:
             "clusters": {str(c.id): round(float(c.grey_mean), 4) for c in clustering.clusters},
         }
     )
-    options = {}
+    options: dict[str, Any] = {}
     if pixel_size_nm:
         # Pixels per centimetre, the usual unit of the resolution tags.
         per_centimetre = 1e7 / pixel_size_nm

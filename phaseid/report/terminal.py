@@ -191,3 +191,36 @@ def _hazards(document: Mapping[str, Any]) -> list[RenderableType]:
         by_text.setdefault(hazard, []).append(phase)
     parts += [Text(f"  {', '.join(names)}: {text}") for text, names in by_text.items()]
     return parts
+
+
+def prediction_table(document: Mapping[str, Any]) -> Group:
+    """Table of a prediction document."""
+    conditions = document["conditions"]
+    heading = Text(
+        f"{conditions['energy_keV']:g} keV, tilt {conditions['tilt_deg']:g} degrees, "
+        f"{document['model']}, {conditions['rule']}"
+    )
+    table = Table(box=None, pad_edge=False, padding=(0, 2, 0, 0))
+    table.add_column("phase", overflow="fold")
+    table.add_column("formula", overflow="fold")
+    headings = ("mean Z", "eta", "signal", "mean energy keV", "range um", "depth um")
+    for text in headings:
+        table.add_column(text, justify="right", no_wrap=True)
+    for phase in document["phases"]:
+        table.add_row(
+            Text(phase["name"] + (" (!)" if phase["hazard"] else "")),
+            Text(phase["formula"]),
+            _plain(phase["mean_atomic_number"], 2),
+            f"{phase['eta']:.4f} ± {phase['eta_sd']:.4f}",
+            _plain(phase["signal"], 4),
+            _plain(phase["mean_energy_keV"], 2),
+            _plain(phase["range_um"], 2),
+            _plain(phase["information_depth_um"], 2),
+        )
+    parts: list[RenderableType] = [heading, table]
+    for phase in document["phases"]:
+        for name, value in phase.get("eta_by_model", {}).items():
+            parts.append(Text(f"{phase['name']}: eta {value:.4f} by {name}"))
+    parts += [_warning(w) for w in document["warnings"]]
+    parts += [Text(f"(!) {p['name']}: {p['hazard']}") for p in document["phases"] if p["hazard"]]
+    return Group(*parts)

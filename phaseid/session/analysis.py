@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
+from typing import Literal
 
 import numpy as np
 
@@ -17,7 +18,8 @@ from phaseid.inference.ranking import Question, Ranking, rank
 from phaseid.inference.scale import ScaleProblem
 from phaseid.inference.series import ImageGreys, Series, link
 from phaseid.session.answers import Analysis, Candidate, ClusterAnswer, Notice, ScaleAnswer
-from phaseid.session.knowledge import Candidates, Knowledge
+from phaseid.session.candidates import Candidates
+from phaseid.session.knowledge import Knowledge
 from phaseid.session.marking import Marked, Place, extra_phases, gather, nearest
 from phaseid.session.settling import settle
 from phaseid.session.state import State
@@ -70,7 +72,7 @@ def analyse(
     InputError
         For conditions or evidence that cannot be used.
     """
-    conditions, notices = settle(state, pictures, [p.path for p in pictures])
+    conditions, notices = settle(state, pictures, [p.path for p in pictures], knowledge.model)
     candidates = knowledge.candidates(conditions, extra_phases(state))
     kept = _kept_clusters(state, pictures)
     series = link([greys for _, greys in kept])
@@ -128,20 +130,17 @@ def _observations(
     pictures: Sequence[Picture], kept: Sequence[tuple[list[int], ImageGreys]], series: Series
 ) -> list[Observation]:
     """One observation per family of clusters; for a single image, one per cluster."""
-    clipped: dict[int, set[str]] = {}
+    clipped: dict[int, Literal["low", "high"]] = {}
     for picture, (members, _), families in zip(pictures, kept, series.member, strict=True):
         for n, family in zip(members, families, strict=True):
             end = picture.clusters[n].clipped
             if end is not None:
-                clipped.setdefault(int(family), set()).add(end)
+                clipped[int(family)] = end
     alone = len(pictures) == 1
     observations = []
     for f, grey in enumerate(series.grey):
-        end = clipped.get(f, set())
         se = kept[0][1].grey_se[list(series.member[0]).index(f)] if alone else series.grey_se[f]
-        observations.append(
-            Observation(float(grey), float(se), clipped=end.pop() if end else None)  # type: ignore[arg-type]
-        )
+        observations.append(Observation(float(grey), float(se), clipped=clipped.get(f)))
     return observations
 
 

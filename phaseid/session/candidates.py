@@ -2,15 +2,18 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
 
 from phaseid.errors import InputError
+from phaseid.hooks.specs import Situation
 from phaseid.inference.candidates import CandidateSet
 from phaseid.inference.departure import Departure
+from phaseid.phases.catalogue import fold
+from phaseid.phases.records import Phase
 from phaseid.physics.conditions import Conditions
 from phaseid.session.answers import Candidate
 
@@ -49,6 +52,8 @@ class Candidates:
     Attributes
     ----------
     conditions : Conditions
+    phases : tuple of Phase
+        The P - 1 phases of the databases and the user; the hole comes last and is none of them.
     set : CandidateSet
         P phases in R rows.
     departure : Departure
@@ -60,15 +65,30 @@ class Candidates:
     shown : tuple of Shown
     lookup : mapping of str to int
         Names, other names and formulas, folded, to phase index.
+    extra : tuple of str
+        Phases the user gave as formulas.
     """
 
     conditions: Conditions
+    phases: tuple[Phase, ...]
     set: CandidateSet
     departure: Departure
     visible: Floats
     variable: NDArray[np.bool_]
     shown: tuple[Shown, ...]
     lookup: Mapping[str, int]
+    extra: tuple[str, ...] = ()
+
+    def situation(self, contexts: Sequence[str]) -> Situation:
+        """What plugins may look at; the hole is not among the phases."""
+        return Situation(
+            self.conditions,
+            tuple(contexts),
+            self.phases,
+            np.array([s.mean_atomic_number for s in self.shown[:-1]]),
+            np.array([s.eta for s in self.shown[:-1]]),
+            self.set.mean_signal[:-1],
+        )
 
     def index(self, text: str) -> int:
         """Index of a phase by name, other name or formula.
@@ -123,11 +143,6 @@ class Candidates:
             shown.note,
             listed,
         )
-
-
-def fold(text: str) -> str:
-    """Spelling that names and formulas are compared in."""
-    return "".join(text.split()).casefold()
 
 
 def void_shown() -> Shown:

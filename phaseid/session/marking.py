@@ -11,7 +11,8 @@ from numpy.typing import NDArray
 from phaseid.errors import InputError
 from phaseid.inference.evidence import elements_evidence, none_likelihood
 from phaseid.inference.observations import Anchor, Observation, dark_level
-from phaseid.session.knowledge import Candidates, Knowledge
+from phaseid.session.candidates import Candidates
+from phaseid.session.knowledge import Knowledge
 from phaseid.session.state import Mark, State
 
 Floats = NDArray[np.float64]

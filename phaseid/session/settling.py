@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from typing import Protocol
 
 from phaseid.errors import InputError
 from phaseid.physics.conditions import Coat, Conditions
 from phaseid.physics.detector import Detector
+from phaseid.physics.elemental import BackscatterModel
 from phaseid.session.answers import Notice
 from phaseid.session.state import State
 
@@ -22,7 +23,10 @@ class HasConditions(Protocol):
 
 
 def settle(
-    state: State, images: Sequence[HasConditions], names: Sequence[str]
+    state: State,
+    images: Sequence[HasConditions],
+    names: Sequence[str],
+    model_named: Callable[[str], str | BackscatterModel] = str,
 ) -> tuple[Conditions, list[Notice]]:
     """Choose the conditions of an analysis.
 
@@ -33,6 +37,8 @@ def settle(
         Images analysed together; they must agree.
     names : sequence of str
         What to call them in messages.
+    model_named : callable
+        Finds a backscatter model by name, so that those of plugins can be chosen.
 
     Returns
     -------
@@ -75,7 +81,7 @@ def settle(
     )
     options: dict[str, object] = {}
     if state.model is not None:
-        options["model"] = state.model
+        options["model"] = model_named(state.model)
     if state.rule is not None:
         options["rule"] = state.rule
     conditions = Conditions(
@@ -101,7 +107,7 @@ def parse_detector(text: str | None) -> Detector:
         return Detector()
     kind, _, threshold = text.partition(":")
     if not threshold:
-        return Detector(kind)  # type: ignore[arg-type]
+        return Detector(kind)
     try:
         value = float(threshold)
     except ValueError:
@@ -109,4 +115,4 @@ def parse_detector(text: str | None) -> Detector:
             f"The detector threshold {threshold!r} is not a number of keV; write for example "
             "solid-state:2."
         ) from None
-    return Detector(kind, value)  # type: ignore[arg-type]
+    return Detector(kind, value)
