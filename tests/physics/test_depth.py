@@ -9,8 +9,6 @@ from phaseid.errors import InputError
 from phaseid.physics import depth
 from phaseid.physics.conditions import Coat, Conditions
 from phaseid.physics.elements import from_atoms, pure
-from phaseid.physics.energy import Detector
-from phaseid.physics.trajectories import Bulk, Inclusion, Material, simulate
 
 
 @pytest.mark.parametrize(
@@ -85,65 +83,6 @@ def test_depths_and_radii_against_an_independent_simulation() -> None:
         ]
         found += [depth.lateral_radius_um(pure(symbol), 5.0, 15.0, s) / full for s in (0.5, 0.9)]
         np.testing.assert_allclose(found, expected, atol=0.035)
-
-
-def test_feature_fraction_grows_from_none_to_all() -> None:
-    sizes = np.array([0.0, 0.01, 0.1, 0.3, 1.0, 3.0, 30.0])
-    for shape in depth.SHAPES:
-        for over_disc in (False, True):
-            share = depth.feature_fraction(sizes, 1.6, 1.6, shape=shape, over_disc=over_disc)
-            assert share[0] == 0.0
-            assert np.all(np.diff(share) >= 0)
-    assert depth.feature_fraction(30.0, 1.6, 1.6) == pytest.approx(1.0, abs=0.02)
-    # Lower energy, shorter range: the same feature counts for more.
-    assert depth.feature_fraction(0.3, 0.5, 0.5) > depth.feature_fraction(0.3, 1.6, 1.6)
-    # The mean over the disc includes the blurred rim.
-    assert depth.feature_fraction(1.0, 1.6, 1.6, over_disc=True) < depth.feature_fraction(
-        1.0, 1.6, 1.6
-    )
-
-
-def test_feature_fraction_against_a_simulation_of_its_own() -> None:
-    """Another pair of materials, energy and seed than the table's: silica in iron at 15 keV."""
-    silica, iron = from_atoms({"Si": 1, "O": 2}), pure("Fe")
-    ranges = [
-        float(depth.electron_range_um(c, rho, 15.0)) for c, rho in ((silica, 2.4), (iron, 7.87))
-    ]
-    detector = Detector("ideal")
-    inside, matrix = Material(silica, 2.4), Material(iron, 7.87)
-    own, other = (
-        simulate(Bulk(m), 15.0, electrons=16_000, seed=1).signal(detector)[0]
-        for m in (inside, matrix)
-    )
-    for relative in (0.3, 0.6):
-        diameter = relative * ranges[0]
-        sample = Inclusion(inside, matrix, diameter / 2)
-        seen = simulate(sample, 15.0, electrons=16_000, seed=2).signal(detector)[0]
-        simulated = (seen - other) / (own - other)
-        assert depth.feature_fraction(diameter, *ranges) == pytest.approx(simulated, abs=0.08)
-
-
-def test_unknown_ranges_and_shapes() -> None:
-    assert np.isnan(depth.feature_fraction(1.0, np.nan, 1.0))
-    mixed = depth.feature_fraction(np.array([1.0, 2.0]), [np.nan, 1.0], 1.0)
-    assert np.isnan(mixed[0])
-    assert np.isfinite(mixed[1])
-    with pytest.raises(InputError, match="half-sphere"):
-        depth.feature_fraction(1.0, 1.0, 1.0, shape="cube")
-
-
-def test_smallest_feature_inverts_the_fraction() -> None:
-    size = depth.smallest_feature_um(1.6, 0.9, 0.9)
-    assert depth.feature_fraction(size, 1.6, 0.9) == pytest.approx(0.9, abs=0.02)
-    assert depth.smallest_feature_um([1.0, 2.0], 1.0).shape == (2,)
-
-
-def test_the_energy_at_which_a_small_feature_can_be_judged() -> None:
-    """At that energy, and the range it has there, the fraction is the one asked for."""
-    energy = float(depth.highest_energy_keV(1.0, 4.0))
-    reach = 4.0 * (energy / 20.0) ** 1.67
-    assert depth.feature_fraction(1.0, reach, reach) == pytest.approx(0.9, abs=0.02)
-    assert 1.0 < energy < 20.0
 
 
 def test_coat_factor_is_one_without_a_coat() -> None:

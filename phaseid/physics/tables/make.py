@@ -37,6 +37,8 @@ _NUMBER = {"Be": 4, "C": 6, "Al": 13, "Ti": 22, "Cr": 24, "Fe": 26, "Cu": 29, "A
 _NUMBER |= {"U": 92}
 _ENERGY = Detector("ideal")
 _REACH = (0.25, 0.5, 1.0)
+_FEATURES = ("Al", "Cu", "Ag")
+_FEATURE_KEV = 10.0
 
 
 def coats(electrons: int) -> Arrays:
@@ -122,52 +124,59 @@ def depths(electrons: int) -> Arrays:
 
 
 def features(electrons: int) -> Arrays:
-    """Share of a small feature's signal that is its own.
+    """What a small feature in a matrix shows: its own share f, and the relief r of its density.
 
-    ``(S - S_matrix) / (S_feature - S_matrix)`` by the ratio of the ranges, feature over matrix, and
-    by diameter over the shorter of the two, in which the curves nearly coincide; part of a sphere
-    that reaches a quarter, half or the whole of its diameter seen at the surface below it; beam at
-    the centre or spread evenly over the disc. Light features in a heavy matrix (Al in Ag) where the feature has the longer range,
-    heavy ones in a light matrix (Ag in Al) where it has the shorter, both at 1; densities set the
-    ratio. Above 1 a heavy feature is brighter than its bulk, as electrons leave through its flanks.
+    ``S = (S_matrix + f (S_feature - S_matrix)) (1 + r)`` by the ratio of the ranges, feature over
+    matrix, and by diameter over the shorter of the two. r comes from a feature of the matrix's own
+    composition at another density (Cu): a loose feature is a pit to the electrons and shows
+    dark, a dense one a bump. f is then the mean of a light feature in a heavy matrix (Al in Ag) and
+    the reverse, weighted by the contrast; `pair_difference` is what is left between the two. Part
+    of a sphere that reaches a quarter, half or the whole of the visible diameter below the surface;
+    beam at the centre or spread evenly over the disc.
     """
-    sizes = np.array([0.1, 0.15, 0.2, 0.3, 0.4, 0.5, 0.7, 1.0, 1.5, 2.5, 4.0])
-    light_in_heavy = np.array([1.0, 1.6, 2.7, 5.0])
-    ratios = np.concatenate([1 / light_in_heavy[:0:-1], light_in_heavy])
-    share = np.zeros((len(ratios), len(sizes), len(_REACH), 2))
+    sizes = np.array([0.1, 0.2, 0.3, 0.45, 0.7, 1.0, 1.5, 2.5, 4.0])
+    ratios = np.array([0.25, 0.5, 1.0, 2.0, 4.0])
+    bare = {s: _pair(_run(Bulk(_bulk(s)), _FEATURE_KEV, 4 * electrons))[1] for s in _FEATURES}
+    relief = np.zeros((len(ratios), len(sizes), len(_REACH), 2))
+    share, difference = np.zeros(relief.shape), np.zeros(relief.shape)
     for r, ratio in enumerate(ratios):
-        pairs = [("Al", "Ag")] if ratio >= 1 else []
-        pairs += [("Ag", "Al")] if ratio <= 1 else []
-        curves = [_feature_curves(*pair, float(ratio), sizes, electrons) for pair in pairs]
-        share[r] = np.mean(curves, axis=0)
-        spread = np.ptp(curves, axis=0).max()
-        _say(f"features: x{ratio:.2f} {share[r, :, 1, 0].round(3)} pairs differ by {spread:.3f}")
-    return {"ratio": ratios, "diameter_over_shorter_range": sizes, "share": share}
+        if ratio != 1.0:
+            relief[r] = _feature_signals("Cu", "Cu", ratio, sizes, electrons) / bare["Cu"] - 1
+        light = _feature_signals("Al", "Ag", ratio, sizes, electrons) / (1 + relief[r])
+        heavy = _feature_signals("Ag", "Al", ratio, sizes, electrons) / (1 + relief[r])
+        step = bare["Ag"] - bare["Al"]
+        of_light, of_heavy = (bare["Ag"] - light) / step, (heavy - bare["Al"]) / step
+        share[r], difference[r] = (of_light + of_heavy) / 2, np.abs(of_light - of_heavy)
+        _say(f"features: x{ratio:g} share {share[r, :, 1, 0].round(3)}")
+        _say(f"   relief {relief[r, :, 1, 0].round(3)} pairs {difference[r, :, 1, 0].round(3)}")
+    return {
+        "ratio": ratios,
+        "diameter_over_shorter_range": sizes,
+        "share": share,
+        "relief": relief,
+        "pair_difference": difference,
+    }
 
 
-def _feature_curves(
+def _feature_signals(
     inside: str, outside: str, ratio: float, sizes: Floats, electrons: int
 ) -> Floats:
-    """Shares of shape (sizes, shape of the feature, width of the beam)."""
-    energy = 10.0
-    own = _pair(_run(Bulk(_bulk(inside)), energy, 4 * electrons))[1]
-    other = _pair(_run(Bulk(_bulk(outside)), energy, 4 * electrons))[1]
-    of_feature = float(kanaya_okayama_um(pure(inside), _DENSITY[inside], energy))
-    of_matrix = float(kanaya_okayama_um(pure(outside), _DENSITY[outside], energy))
+    """Signals of shape (sizes, reach of the feature, width of the beam)."""
+    of_feature = float(kanaya_okayama_um(pure(inside), _DENSITY[inside], _FEATURE_KEV))
+    of_matrix = float(kanaya_okayama_um(pure(outside), _DENSITY[outside], _FEATURE_KEV))
     # Ranges go with one over the density: thin or pack the matrix to the wanted ratio.
     matrix = Material(pure(outside), _DENSITY[outside] * of_matrix * ratio / of_feature)
     shorter = min(of_feature, of_feature / ratio)
-    share = np.zeros((len(sizes), len(_REACH), 2))
+    signals = np.zeros((len(sizes), len(_REACH), 2))
     for d, diameter in enumerate(sizes * shorter):
         for k, reach in enumerate(_REACH):
             seen, below = diameter / 2, diameter * reach
             radius = (seen**2 + below**2) / (2 * below)
             sample = Inclusion(_bulk(inside), matrix, radius, below - radius)
             for spread in (0, 1):
-                beam = Start(energy, diameter_um=diameter * spread)
-                signal = _pair(_run(sample, beam, electrons))[1]
-                share[d, k, spread] = (signal - other) / (own - other)
-    return share
+                beam = Start(_FEATURE_KEV, diameter_um=diameter * spread)
+                signals[d, k, spread] = _pair(_run(sample, beam, electrons))[1]
+    return signals
 
 
 MAKERS: dict[str, Callable[[int], Arrays]] = {
