@@ -142,16 +142,58 @@ def test_smooth_error_covers_what_the_models_do_to_a_ratio() -> None:
     assert 0.5 < np.sqrt(np.mean(ratio**2)) < 1.5
 
 
-# Change of eta and energy-weighted signal under 20 nm of carbon (simulated, lower and upper bound
-# over the elements), without a detector threshold.
-@pytest.mark.parametrize(
-    ("energy_keV", "low", "high"), [(20.0, -0.02, 0.0), (10.0, -0.055, -0.015)]
-)
-def test_carbon_coat_against_simulation(energy_keV: float, low: float, high: float) -> None:
-    for symbol in ("Al", "Fe", "Au"):
-        bare = signal(pure(symbol), energy_keV, detector=Detector("ideal"))
-        coated = signal(pure(symbol), energy_keV, detector=Detector("ideal"), coat=Coat("C", 20))
+# Change under 20 nm of carbon, lower and upper bound over the elements, without a detector
+# threshold; simulated independently of the table that ships.
+CARBON = [
+    ("counting", 20.0, -0.01, 0.0),
+    ("counting", 10.0, -0.015, 0.0),
+    ("counting", 5.0, -0.07, -0.035),
+    ("ideal", 20.0, -0.02, 0.0),
+    ("ideal", 10.0, -0.04, -0.02),
+    ("ideal", 5.0, -0.14, -0.08),
+]
+
+
+@pytest.mark.parametrize(("kind", "energy_keV", "low", "high"), CARBON)
+def test_carbon_coat_against_simulation(
+    kind: str, energy_keV: float, low: float, high: float
+) -> None:
+    detector = Detector(kind)
+    for symbol in ("Al", "Fe", "Ag", "Au"):
+        bare = signal(pure(symbol), energy_keV, detector=detector)
+        coated = signal(pure(symbol), energy_keV, detector=detector, coat=Coat("C", 20))
         assert low <= coated / bare - 1 <= high
+
+
+def test_a_coat_of_the_same_material_changes_nothing_and_a_thick_one_is_all_that_is_seen() -> None:
+    for material in ("C", "Cr", "Au"):
+        same = signal(pure(material), coat=Coat(material, 30)) / signal(pure(material))
+        assert same == pytest.approx(1.0, abs=1e-9)
+    buried = signal(pure("Si"), 5.0, coat=Coat("Au", 500))
+    assert buried == pytest.approx(float(signal(pure("Au"), 5.0)), rel=0.02)
+
+
+def test_a_coat_grows_steadily_from_nothing() -> None:
+    changes = [
+        float(signal(pure("Si"), 15.0, coat=Coat("Pt", t)) / signal(pure("Si"), 15.0)) - 1
+        for t in (0.01, 1.0, 2.0, 4.0, 8.0, 16.0)
+    ]
+    assert 0 < changes[0] < 2e-3
+    assert np.all(np.diff(changes) > 0)
+    # Thin coats count in proportion to their thickness.
+    assert changes[2] / changes[1] == pytest.approx(2.0, rel=0.1)
+
+
+def test_tilting_lengthens_the_way_through_the_coat() -> None:
+    flat, tilted = (
+        signal(pure("Au"), 10.0, t, coat=Coat("C", 20)) / signal(pure("Au"), 10.0, t)
+        for t in (0.0, 60.0)
+    )
+    assert tilted < flat < 1.0
+
+
+def test_vacuum_under_a_coat_stays_dark() -> None:
+    assert signal(np.zeros(ELEMENT_COUNT), coat=Coat("Au", 10)) == 0.0
 
 
 @pytest.mark.parametrize(("energy_keV", "change"), [(20.0, 0.13), (10.0, 0.38), (5.0, 0.81)])
@@ -159,7 +201,7 @@ def test_gold_coat_on_silicon_against_simulation(energy_keV: float, change: floa
     counting = Detector("counting")
     bare = signal(pure("Si"), energy_keV, detector=counting)
     coated = signal(pure("Si"), energy_keV, detector=counting, coat=Coat("Au", 10))
-    assert coated / bare - 1 == pytest.approx(change, rel=0.25)
+    assert coated / bare - 1 == pytest.approx(change, rel=0.15, abs=0.01)
 
 
 def test_signal_under_takes_everything_from_the_conditions() -> None:

@@ -15,9 +15,10 @@ from phaseid.physics.backscatter import (
     eta_ensemble,
     tilt_laws,
 )
+from phaseid.physics.conditions import Coat
 from phaseid.physics.depth import electron_range_um
 from phaseid.physics.elements import from_atoms, pure
-from phaseid.physics.energy import Detector, mean_energy_fraction
+from phaseid.physics.energy import Detector, mean_energy_fraction, signal
 from phaseid.physics.trajectories import (
     Bulk,
     Exits,
@@ -364,3 +365,30 @@ def test_wrong_samples_are_refused() -> None:
         Inclusion(iron, iron, 1.0, -2.0)
     with pytest.raises(InputError, match="standard error"):
         simulate_to(Bulk(iron), 20.0, eta_se=0.0)
+
+
+@pytest.mark.parametrize(
+    ("coat", "under", "energy_keV", "tilt_deg"),
+    [
+        (Coat("C", 40.0), "Fe", 8.0, 0.0),
+        (Coat("Pt", 6.0), "Al", 12.0, 0.0),
+        (Coat("Au-Pd", 8.0), "Si", 15.0, 0.0),
+        (Coat("C", 40.0), "Fe", 8.0, 45.0),
+    ],
+)
+def test_coat_table_against_a_simulation_of_its_own(
+    coat: Coat, under: str, energy_keV: float, tilt_deg: float
+) -> None:
+    """Materials, thicknesses and energies that the table does not hold."""
+    film = Film(
+        Material(coat.mass_fractions, coat.density), coat.thickness_nm * 1e-3, element(under)
+    )
+    start = Start(energy_keV, tilt_deg)
+    detector = Detector("ideal")
+    with_coat, se = simulate(film, start, electrons=40_000, seed=8).signal(detector)
+    bare, bare_se = simulate(Bulk(element(under)), start, electrons=40_000, seed=9).signal(detector)
+    predicted = signal(pure(under), energy_keV, tilt_deg, detector=detector, coat=coat) / signal(
+        pure(under), energy_keV, tilt_deg, detector=detector
+    )
+    noise = np.hypot(se / with_coat, bare_se / bare)
+    assert abs(with_coat / bare / predicted - 1) < 3 * noise + 0.03
