@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any
 
 import numpy as np
@@ -13,14 +13,15 @@ from phaseid.errors import InputError
 from phaseid.image import editing
 from phaseid.image.areas import Area, mask_of
 from phaseid.image.clusters import Cluster, Components
+from phaseid.image.finding_clusters import Found, find_clusters
 from phaseid.image.greyimage import GreyImage
-from phaseid.image.infobar import used_rows
-from phaseid.image.measuring import measure
-from phaseid.image.mixture import GreyMixture
-from phaseid.image.noise import NoiseLaw, estimate_noise
+from phaseid.image.noise import NoiseLaw
 from phaseid.image.notices import Finding
+from phaseid.image.settled import settle
+from phaseid.image.shading import Shading
+from phaseid.image.smoothing import smoothed_greys
 
-__all__ = ["Cluster", "Clustering", "cluster_image"]
+__all__ = ["Cluster", "Clustering", "Progress", "cluster_image"]
 
 Progress = Callable[[float, str], None]
 
@@ -31,31 +32,48 @@ class Clustering:
 
     Attributes
     ----------
+    image : GreyImage
     clusters : tuple of Cluster
-        Ascending grey.
+        Ascending grey; ids count from 1.
     labels : ndarray of uint8, shape (rows, columns)
         Id of the cluster of each pixel; 0 for the bar and excluded areas.
-    edge : ndarray of bool, shape (rows, columns)
-        Pixels near a border, which do not enter the means.
+    edge_bits : ndarray of uint8
+        The mask `edge`, eight pixels a byte.
     histogram : (values, counts)
         Of all pixels that are labelled.
     mixture : Components
     noise : NoiseLaw
+    shading : Shading
+        In units of the noise, over the rows and columns of `crop`.
     warnings : tuple of Finding
     region_table : ndarray of REGION_FIELDS
+        One row per connected region.
     crop : (first row, end row, first column, end column)
+        What was looked at: without the bar.
+    blur_px : float
+        Standard deviation of the borders' blur.
+    corrections : dict
+        Greys of clusters of small specks, by their place in the grey order, as `(mean, error)`.
     """
 
+    image: GreyImage
     clusters: tuple[Cluster, ...]
     labels: NDArray[np.uint8]
-    edge: NDArray[np.bool_]
+    edge_bits: NDArray[np.uint8]
     histogram: tuple[NDArray[np.float64], NDArray[np.int64]]
     mixture: Components
     noise: NoiseLaw
+    shading: Shading
     warnings: tuple[Finding, ...]
     region_table: NDArray[Any]
     crop: tuple[int, int, int, int]
-    image: GreyImage
+    blur_px: float = 1.0
+
+    @property
+    def edge(self) -> NDArray[np.bool_]:
+        """Pixels within two of another cluster; they do not enter the means."""
+        columns = self.labels.shape[1]
+        return np.unpackbits(self.edge_bits, axis=1, count=columns).view(bool)
 
     @property
     def phases(self) -> tuple[Cluster, ...]:
@@ -67,24 +85,47 @@ class Clustering:
         return min(self.clusters, key=lambda c: abs(c.grey_mean - grey))
 
     def merge(self, ids: Sequence[int]) -> Clustering:
-        """Make one cluster of several."""
+        """Make one cluster of several.
+
+        Raises
+        ------
+        InputError
+            If an id does not exist, or fewer than two are given.
+        """
         return self._with(editing.merged(self.labels, ids, self._ids()))
 
     def split(self, id: int, parts: int = 2) -> Clustering:
-        """Divide a cluster by grey into `parts`."""
+        """Divide a cluster by grey into `parts`.
+
+        Raises
+        ------
+        InputError
+            If the cluster does not exist or has not so many greys.
+        """
         return self._with(editing.split(self.labels, self._smooth(), id, parts, self._ids()))
 
     def move_boundary(self, a: int, b: int, grey: float) -> Clustering:
-        """Divide the pixels of two clusters anew at a grey (of the locally averaged image)."""
+        """Divide the pixels of two clusters anew at a grey (of the locally averaged image).
+
+        Raises
+        ------
+        InputError
+            If a cluster does not exist or would be empty.
+        """
         mean = {c.id: c.grey_mean for c in self.clusters}
         if a in mean and b in mean and mean[a] > mean[b]:
             a, b = b, a
-        return self._with(
-            editing.boundary_moved(self.labels, self._smooth(), a, b, grey, self._ids())
-        )
+        changed = editing.boundary_moved(self.labels, self._smooth(), a, b, grey, self._ids())
+        return self._with(changed)
 
     def exclude(self, *areas: Area | NDArray[Any]) -> Clustering:
-        """Leave areas out; the clusters are measured on what remains."""
+        """Leave areas out; the clusters are measured on what remains.
+
+        Raises
+        ------
+        InputError
+            If an area lies outside the image, or nothing remains.
+        """
         outside = mask_of(areas, self.labels.shape)
         if outside is None:
             return self
@@ -94,16 +135,15 @@ class Clustering:
         return [c.id for c in self.clusters]
 
     def _smooth(self) -> NDArray[np.float32]:
-        from scipy import ndimage
-
-        return np.asarray(
-            ndimage.gaussian_filter(
-                ndimage.median_filter(self.image.data.astype(np.float32), 3), 1.5
-            )
-        )
+        return smoothed_greys(self.image.data, self.noise, self.shading, self.crop)
 
     def _with(self, labels: NDArray[np.uint8]) -> Clustering:
-        return finish(self.image, labels, self.noise, self.mixture, self.warnings, self.crop)
+        # What was said of single clusters no longer holds; what was said of the image does.
+        kept = {c.id: c for c in self.clusters if c.interior_pixels == 0 or c.notes}
+        found = Found(
+            labels, self.noise, self.shading, self.crop, self.warnings, self.blur_px, {}, kept
+        )
+        return _finished(self.image, found)
 
 
 def cluster_image(
@@ -114,81 +154,94 @@ def cluster_image(
     progress: Progress | None = None,
     random_state: int = 0,
 ) -> Clustering:
-    """Find the clusters of grey of an image."""
-    from scipy import ndimage
+    """Find the clusters of grey of an image.
 
-    data = image.data
-    first, end = used_rows(data, image.provenance.get("image_rows"))
-    outside = mask_of(exclude, data.shape)
-    part = data[first:end].astype(np.float32)
-    noise = estimate_noise(data[first:end])
-    smooth = ndimage.gaussian_filter(ndimage.median_filter(part, 3), 1.5)
-    gradient = np.hypot(ndimage.sobel(smooth, 0), ndimage.sobel(smooth, 1)) / 8
-    sd = noise.sd(smooth)
-    calm = gradient < 0.35 * sd
-    if calm.mean() < 0.2:
-        calm = gradient < np.quantile(gradient, 0.5)
-    greys = smooth[calm]
-    values, edges = np.histogram(greys, bins=400)
-    centres = (edges[1:] + edges[:-1]) / 2
-    width = float(edges[1] - edges[0])
-    keep = values > 0
-    floor = float(np.median(sd)) * 0.35
-    best = None
-    for k in [n_clusters] if n_clusters else range(1, 9):
-        model = GreyMixture(
-            k,
-            noise=(floor**2, 0.0),
-            spread="floor",
-            bin_width=width,
-            n_init=3,
-            random_state=random_state,
-        ).fit(centres[keep], sample_weight=values[keep])
-        m, s, w = model.means_[:, 0], np.sqrt(model.covariances_[:, 0, 0]), model.weights_
-        apart = np.diff(m) / np.sqrt((s[1:] ** 2 + s[:-1] ** 2) / 2) if k > 1 else np.array([9.0])
-        if not n_clusters and (apart.min() < 3.0 or w.min() < 0.01):
-            continue
-        bic = model.bic(centres[keep], sample_weight=values[keep] / 50)
-        if best is None or bic < best[0]:
-            best = (bic, model)
-    assert best is not None
-    model = best[1]
-    label = (model.predict(smooth.ravel()) + 1).astype(np.uint8).reshape(smooth.shape)
-    labels = np.zeros(data.shape, np.uint8)
-    labels[first:end] = label
-    if outside is not None:
-        labels[outside] = 0
-    if progress is not None:
-        progress(1.0, "clusters")
-    mixture = Components(model.weights_, model.means_[:, 0], np.sqrt(model.covariances_[:, 0, 0]))
-    return finish(image, labels, noise, mixture, image.flags, (first, end, 0, data.shape[1]))
+    Parameters
+    ----------
+    image : GreyImage
+    n_clusters : int, optional
+        Force this number; by default it is chosen.
+    exclude : sequence of Area or ndarray of bool
+        What to leave out, in pixels of the whole image.
+    progress : callable, optional
+        Called with the share done, 0 to 1, and what is being done. It may raise to interrupt.
+    random_state : int
+        Seed of the fits that need one.
+
+    Returns
+    -------
+    Clustering
+
+    Raises
+    ------
+    InputError
+        If nothing of the image is left, or `n_clusters` cannot be had.
+    """
+    if n_clusters is not None and not 1 <= n_clusters <= editing.MOST_CLUSTERS:
+        raise InputError(
+            f"{n_clusters} clusters were asked for; give a number from 1 to {editing.MOST_CLUSTERS}."
+        )
+    outside = mask_of(exclude, image.shape)
+    found = find_clusters(image, outside, progress or _silent, random_state)
+    clustering = _finished(image, found)
+    if n_clusters is not None:
+        clustering = _forced(clustering, n_clusters)
+    return clustering
 
 
-def finish(
-    image: GreyImage,
-    labels: NDArray[np.uint8],
-    noise: NoiseLaw,
-    mixture: Components,
-    warnings: tuple[Finding, ...],
-    crop: tuple[int, int, int, int],
-) -> Clustering:
-    """Number clusters by ascending grey and measure everything that depends on the labels."""
-    from scipy import ndimage
+def _silent(share: float, what: str) -> None:
+    return None
 
-    if not labels.any():
-        raise InputError("Nothing of the image is left; exclude less.")
-    size = np.bincount(labels.ravel(), minlength=256)
-    total = np.bincount(labels.ravel(), weights=image.data.ravel(), minlength=256)
-    present = [k for k in range(1, 256) if size[k]]
-    present.sort(key=lambda k: total[k] / size[k])
-    lookup = np.zeros(256, np.uint8)
-    lookup[present] = np.arange(1, len(present) + 1)
-    labels = lookup[labels]
-    filled = np.where(labels == 0, ndimage.maximum_filter(labels, 3), labels)
-    edge = ndimage.maximum_filter(filled, 3) != ndimage.minimum_filter(filled, 3)
-    clusters, regions = measure(image.data, labels, edge, noise, image.pixel_size_nm)
-    values, counts = np.unique(image.data[labels > 0], return_counts=True)
-    histogram = (values.astype(float), counts)
+
+def _finished(image: GreyImage, found: Found) -> Clustering:
+    settled = settle(image, found)
     return Clustering(
-        clusters, labels, edge, histogram, mixture, noise, warnings, regions, crop, image
+        image,
+        settled.clusters,
+        settled.labels,
+        settled.edge_bits,
+        settled.histogram,
+        settled.mixture,
+        found.noise,
+        found.shading,
+        settled.warnings,
+        settled.regions,
+        found.crop,
+        found.blur_px,
+    )
+
+
+def _forced(clustering: Clustering, wanted: int) -> Clustering:
+    """Merge the least different clusters, or split the widest, until the number is right."""
+    while len(clustering.clusters) > wanted:
+        pairs = list(zip(clustering.clusters[:-1], clustering.clusters[1:], strict=True))
+        a, b = min(pairs, key=lambda p: _loss(*p))
+        clustering = clustering.merge([a.id, b.id])
+    while len(clustering.clusters) < wanted:
+        clustering = _split_widest(clustering)
+    note = Finding(
+        "forced-number",
+        f"The number of clusters was set to {wanted} by the user.",
+        "Leave it to be chosen to see what the image itself supports.",
+        "note",
+    )
+    others = tuple(w for w in clustering.warnings if w.code != note.code)
+    return replace(clustering, warnings=(*others, note))
+
+
+def _loss(a: Cluster, b: Cluster) -> float:
+    """Increase in squared deviation when two clusters become one (Ward 1963)."""
+    weight = a.pixels * b.pixels / (a.pixels + b.pixels)
+    return weight * (a.grey_mean - b.grey_mean) ** 2
+
+
+def _split_widest(clustering: Clustering) -> Clustering:
+    order = sorted(clustering.clusters, key=lambda c: c.pixels * c.grey_sd**2, reverse=True)
+    for cluster in order:
+        try:
+            return clustering.split(cluster.id, 2)
+        except InputError:
+            continue
+    raise InputError(
+        f"The image has only {len(clustering.clusters)} distinguishable greys; ask for fewer clusters."
     )

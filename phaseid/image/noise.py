@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import lru_cache
 from typing import Any
 
 import numpy as np
@@ -10,13 +11,18 @@ from numpy.typing import NDArray
 
 FloatArray = NDArray[np.float64]
 
-BLOCK = 16
+BLOCK = 8
 LAGS = 4
 GREY_BINS = 24
-FEWEST_BLOCKS = 6
-# Blocks without edges have the smallest variances; a low quantile picks them in any texture.
-QUANTILE = 0.3
-MOST_BLOCKS = 40_000
+FEWEST_BLOCKS = 12
+# Blocks without edges have the smallest variances: a low quantile finds them in any texture, and all
+# blocks not much noisier than that are used.
+QUANTILE = 0.15
+ACCEPTED = 1.25
+MOST_BLOCKS = 60_000
+ROUNDS = 40
+# A slope that explains less of the scatter than this is chance.
+SLOPE_GAIN = 0.75
 
 
 @dataclass(frozen=True)
@@ -26,19 +32,22 @@ class NoiseLaw:
     Attributes
     ----------
     constant, slope : float
-    correlation_row, correlation_column : float
-        Sum of the noise's autocorrelation over all lags along a row and down a column; 1 for white noise.
+    row, column : tuple of float
+        Autocorrelation of the noise at lags 1, 2, ... along a row and down a column; empty for white noise.
+    lowest_variance : float
+        The law does not go below this.
     """
 
     constant: float
     slope: float
-    correlation_row: float = 1.0
-    correlation_column: float = 1.0
+    row: tuple[float, ...] = ()
+    column: tuple[float, ...] = ()
+    lowest_variance: float = 1e-12
 
     @property
     def correlated_pixels(self) -> float:
         """Pixels that count as one independent pixel in a mean over many."""
-        return self.correlation_row * self.correlation_column
+        return (1.0 + 2.0 * sum(self.row)) * (1.0 + 2.0 * sum(self.column))
 
     def variance(self, grey: Any) -> Any:
         """Pixel variance at a grey."""
@@ -50,8 +59,8 @@ class NoiseLaw:
 
     @property
     def floor(self) -> float:
-        """Smallest variance the law gives: that of rounding, or a millionth of the greys."""
-        return 1e-12 + 0.0 * self.constant
+        """Smallest variance the law gives, so that a grey below all seen ones still has one."""
+        return self.lowest_variance
 
     @property
     def pair(self) -> tuple[float, float]:
@@ -77,20 +86,28 @@ def estimate_noise(data: NDArray[Any]) -> NoiseLaw:
     step = 1.0 / 12.0 if data.dtype.kind == "u" else 0.0
     if blocks is None:
         spread = float(np.var(np.diff(data.astype(np.float64), axis=1))) / 2
-        return NoiseLaw(max(spread, step, 1e-12), 0.0)
+        return NoiseLaw(max(spread, step, 1e-12), 0.0, lowest_variance=max(step, 1e-12))
     grey = blocks.mean(axis=(1, 2))
-    rows = np.stack([_lagged(blocks, k, 2) for k in range(1, LAGS + 1)])
-    columns = np.stack([_lagged(blocks, k, 1) for k in range(1, LAGS + 1)])
-    far = 0.5 * (rows[-1] + columns[-1])
-    near = np.minimum(rows[0], columns[0])
-    level, variance, weight, quiet = _by_grey(grey, near, far, _clipped(blocks, data))
+    rows, columns = _differences(blocks)
+    usable = np.flatnonzero(~_clipped(blocks, data))
+    if len(usable) < FEWEST_BLOCKS:
+        usable = np.arange(len(grey))
+    usable = usable[np.argsort(grey[usable], kind="stable")]
+    parts = np.array_split(usable, min(GREY_BINS, max(1, len(usable) // (2 * FEWEST_BLOCKS))))
+    picks = [_quiet(part, rows, columns) for part in parts]
+    level = np.array([grey[pick].mean() for pick in picks])
+    variance = np.array([_full_variance(rows[:, pick], columns[:, pick]) for pick in picks])
+    variance /= _selection_bias()
+    # Pure greys crowd into narrow bins; wide ones hold blends, whose blocks are never quiet.
+    width = np.array([np.ptp(grey[part]) for part in parts]) + 1e-9
+    weight = np.minimum(1.0, np.median(width) / width) * [len(pick) for pick in picks]
     constant, slope = _line(level, variance, weight)
+    near = np.abs(variance / np.maximum(constant + slope * level, 1e-300) - 1) < 0.3
+    quiet = np.concatenate([p for p, n in zip(picks, near, strict=True) if n] or picks)
     row = _correlation(rows[:, quiet])
     column = _correlation(columns[:, quiet])
-    low = constant + slope * float(level.min())
-    if low < step:
-        constant += step - min(low, step)
-    return NoiseLaw(constant, slope, row, column)
+    lowest = max(step, 0.25 * float(constant + slope * level.min()), 1e-12)
+    return NoiseLaw(constant, slope, row, column, lowest)
 
 
 def _blocks(data: NDArray[Any]) -> FloatArray | None:
@@ -119,24 +136,31 @@ def _clipped(blocks: FloatArray, data: NDArray[Any]) -> NDArray[np.bool_]:
     return np.asarray(cut > 0.01)
 
 
-def _by_grey(
-    grey: FloatArray, near: FloatArray, far: FloatArray, clipped: NDArray[np.bool_]
-) -> tuple[FloatArray, FloatArray, FloatArray, NDArray[np.intp]]:
-    usable = np.flatnonzero(~clipped)
-    if len(usable) < FEWEST_BLOCKS:
-        usable = np.arange(len(grey))
-    usable = usable[np.argsort(grey[usable], kind="stable")]
-    parts = np.array_split(usable, min(GREY_BINS, max(1, len(usable) // FEWEST_BLOCKS)))
-    level, variance, weight, quiet = [], [], [], []
-    for part in parts:
-        limit = np.quantile(near[part], QUANTILE)
-        chosen = part[near[part] <= limit]
-        # The mean of the lowest share lies below the mean of all by what chance alone does.
-        level.append(grey[chosen].mean())
-        variance.append(np.median(far[chosen]))
-        weight.append(len(chosen))
-        quiet.append(chosen)
-    return np.array(level), np.array(variance), np.array(weight, float), np.concatenate(quiet)
+def _differences(blocks: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """Half mean squared differences at lags 1 to 4, shape (lags, blocks), along rows and columns."""
+    rows = np.stack([_lagged(blocks, k, 2) for k in range(1, LAGS + 1)])
+    columns = np.stack([_lagged(blocks, k, 1) for k in range(1, LAGS + 1)])
+    return rows, columns
+
+
+def _quiet(part: NDArray[np.intp], rows: FloatArray, columns: FloatArray) -> NDArray[np.intp]:
+    near = rows[0, part] + columns[0, part]
+    limit = ACCEPTED * float(np.quantile(near, QUANTILE))
+    return part[near <= limit]
+
+
+def _full_variance(rows: FloatArray, columns: FloatArray) -> float:
+    """Variance of a pixel: the differences at the lag where the correlation has died away."""
+    return float(max(rows.mean(axis=1).max(), columns.mean(axis=1).max()))
+
+
+@lru_cache(maxsize=1)
+def _selection_bias() -> float:
+    """What the choice of quiet blocks does to noise of variance one."""
+    white = np.random.default_rng(0).standard_normal((4000, BLOCK, BLOCK))
+    rows, columns = _differences(white)
+    pick = _quiet(np.arange(len(white)), rows, columns)
+    return _full_variance(rows[:, pick], columns[:, pick])
 
 
 def _line(level: FloatArray, variance: FloatArray, weight: FloatArray) -> tuple[float, float]:
@@ -146,7 +170,7 @@ def _line(level: FloatArray, variance: FloatArray, weight: FloatArray) -> tuple[
         return float(np.median(variance)), 0.0
     scale = weight.copy()
     constant, slope = float(np.average(variance, weights=weight)), 0.0
-    for _ in range(30):
+    for _ in range(ROUNDS):
         w = scale / np.maximum(variance.mean(), 1e-300) ** 2
         centre = np.average(level, weights=w)
         slope = float(
@@ -154,9 +178,15 @@ def _line(level: FloatArray, variance: FloatArray, weight: FloatArray) -> tuple[
         )
         slope = max(slope, 0.0)
         constant = float(np.average(variance, weights=w) - slope * centre)
-        residual = np.abs(variance - constant - slope * level)
-        typical = np.median(residual) + 1e-12 * (1 + variance.mean())
-        scale = weight / np.maximum(residual, 0.3 * typical)
+        residual = variance - constant - slope * level
+        typical = np.median(np.abs(residual)) + 1e-12 * (1 + variance.mean())
+        # Edges and texture only ever add variance: a point above the line says less than one below.
+        trust = np.where(residual > 0, 0.4, 1.0)
+        scale = weight * trust / np.maximum(np.abs(residual), 0.3 * typical)
+    flat = float(np.median(variance))
+    left = np.sum(weight * np.abs(variance - constant - slope * level))
+    if left > SLOPE_GAIN * np.sum(weight * np.abs(variance - flat)):
+        return flat, 0.0
     # The law must stay positive over the greys it was seen on.
     lowest = float(level.min())
     if constant + slope * lowest <= 0:
@@ -165,8 +195,10 @@ def _line(level: FloatArray, variance: FloatArray, weight: FloatArray) -> tuple[
     return constant, slope
 
 
-def _correlation(lagged: FloatArray) -> float:
-    """Sum of the autocorrelation from half mean squared differences at lags 1 to 4."""
+def _correlation(lagged: FloatArray) -> tuple[float, ...]:
+    """Autocorrelation at lags 1 to 3 from half mean squared differences at lags 1 to 4."""
     mean = np.median(lagged, axis=1)
     full = max(float(mean.max()), 1e-300)
-    return float(max(1.0, 1.0 + 2.0 * np.sum(1.0 - mean / full)))
+    found = np.clip(1.0 - mean[:-1] / full, 0.0, 1.0)
+    # Chance alone gives a per cent or two.
+    return tuple(float(v) if v > 0.02 else 0.0 for v in found)
