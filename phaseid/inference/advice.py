@@ -260,7 +260,7 @@ def frames_bits(ranking: Ranking, k: int) -> float:
     seen = question.observations[k]
     if seen.clipped is not None:
         return 0.0
-    gain = float(ranking.particles.mean_sd(ranking.particles.gain)[0])
+    gain = ranking.particles.centre(ranking.particles.gain)[0]
     probability = ranking.probability[k]
     own = float(probability @ question.candidates.range_sd) * gain
     now, then = own**2 + seen.grey_se**2, own**2 + seen.grey_se**2 / 4

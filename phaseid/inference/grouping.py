@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -57,15 +57,21 @@ def predicted_greys(ranking: Ranking, phases: Ints, most: int = 1500) -> tuple[F
     candidates = question.candidates
     picked = np.argsort(-particles.weight, kind="stable")[:most]
     weight = particles.weight[picked] / particles.weight[picked].sum()
-    curves, gain = particles.curves[picked], particles.gain[picked]
+    chosen = replace(
+        particles,
+        offset=particles.offset[picked],
+        gain=particles.gain[picked],
+        curves=particles.curves[picked],
+        signal=particles.signal[picked],
+        weight=weight,
+    )
+    gain = chosen.centre(chosen.gain)[0]
     means, sds = np.empty(len(phases)), np.empty(len(phases))
     for n, p in enumerate(phases):
         true = np.full(len(picked), candidates.mean_signal[p])
-        grey = particles.offset[picked] + gain * question.departure.undo(curves, true)
-        mean = weight @ grey
-        own = gain * candidates.range_sd[p]
-        means[n] = mean
-        sds[n] = np.sqrt(weight @ ((grey - mean) ** 2 + own**2))
+        grey = chosen.offset + chosen.gain * question.departure.undo(chosen.curves, true)
+        means[n], spread = chosen.centre(grey)
+        sds[n] = np.hypot(spread, gain * candidates.range_sd[p])
     return means, sds
 
 
@@ -94,7 +100,7 @@ def place(ranking: Ranking, cluster: int, top: int, also: Sequence[int] = ()) ->
     best = _best(probability, top)
     more = [p for p in dict.fromkeys(also) if p not in best]
     phases = np.concatenate([best, np.array(more, dtype=np.intp)])
-    gain = float(ranking.particles.mean_sd(ranking.particles.gain)[0])
+    gain = ranking.particles.centre(ranking.particles.gain)[0]
     signal = _conditional_signal(ranking, cluster, phases)
     own = np.sqrt(candidates.by_phase(candidates.share * candidates.own_sd**2))[phases]
     error = question.observations[cluster].grey_se / gain

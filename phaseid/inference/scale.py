@@ -65,6 +65,19 @@ class Particles:
         variance = self.weight @ (values - mean) ** 2
         return mean, np.sqrt(np.maximum(variance, 0.0))
 
+    def centre(self, values: Floats) -> tuple[float, float]:
+        """Weighted median of particle values and half the width of their central 68 %.
+
+        Without a known phase the scale's posterior has long tails that a mean would follow.
+        """
+        order = np.argsort(values, kind="stable")
+        share = np.cumsum(self.weight[order])
+        low, middle, high = (
+            float(values[order[min(np.searchsorted(share, q), len(order) - 1)]])
+            for q in (0.16, 0.5, 0.84)
+        )
+        return middle, (high - low) / 2
+
 
 @dataclass(frozen=True)
 class ScaleProblem:

@@ -17,6 +17,8 @@ Floats = NDArray[np.float64]
 # Mounting, polishing and coating materials can turn up on any sample.
 EVERYWHERE = "preparation"
 EVERYWHERE_WORD = "rare"
+# A phase that is listed only for a special case of the context: most samples are another case.
+BELOW = 0.3
 
 
 @dataclass(frozen=True)
@@ -118,7 +120,9 @@ class ContextTree:
         Parameters
         ----------
         contexts : sequence of str
-            A phase takes its largest weight over them; none gives every phase the same.
+            A phase takes its largest weight over them; none gives every phase the same. A phase listed
+            for a context counts for every context below it, unless the lower one says otherwise, and
+            for every context above it at `BELOW` of its weight.
         phases : sequence of Phase
 
         Returns
@@ -157,6 +161,8 @@ def _weight(phase: Phase, above: Sequence[str]) -> float:
     for step in reversed(above):
         if step in phase.contexts:
             return ABUNDANCE[phase.contexts[step]]
+    below = [ABUNDANCE[w] for p, w in phase.contexts.items() if p.startswith(above[-1] + "/")]
+    weight = BELOW * max(below) if below else UNLISTED
     if any(p.split("/")[0] == EVERYWHERE for p in phase.contexts):
-        return ABUNDANCE[EVERYWHERE_WORD]
-    return UNLISTED
+        weight = max(weight, ABUNDANCE[EVERYWHERE_WORD])
+    return weight

@@ -84,7 +84,7 @@ class _Part:
 class _Reader:
     def __init__(self, text: str) -> None:
         self.original = text
-        self.text = text.translate(_PLAIN).replace(" ", "")
+        self.text = _dotted(text.translate(_PLAIN).replace(" ", ""))
         self.at = self.depth = 0
         self.elements: set[str] = set()
         self.variables: set[str] = set()
@@ -375,6 +375,14 @@ class _Reader:
         name = f"range {len(self.ranges) + 1}"
         self.ranges[name] = (min(first, second), max(first, second))
         return variable(name)
+
+
+def _dotted(text: str) -> str:
+    """Tell a full stop that joins parts from a decimal point: before water, and between multiplied oxides."""
+    text = re.sub(r"\.((?:\d+\.)?\d*H2O)", r"·\1", text)
+    if re.match(r"\d+(?:\.\d+)?[A-Z]", text):
+        text = re.sub(r"(?<=[A-Za-z\d)])\.(?=\d*[A-Z(])", "·", text)
+    return text
 
 
 def _nothing(values: Values) -> dict[str, float]:

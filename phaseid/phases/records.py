@@ -80,7 +80,7 @@ class Phase:
         """Density in the middle of its range, g/cm3."""
         if self.density_range is None:
             return None
-        return sum(self.density_range) / 2
+        return round(sum(self.density_range) / 2, 6)
 
     @property
     def names(self) -> tuple[str, ...]:

@@ -358,12 +358,12 @@ def _scale(ranking: Ranking | None, marked: Marked) -> ScaleAnswer | None:
     if len(ranking.question.observations) + len(marked.anchors) < 2:
         return None
     particles = ranking.particles
-    offset, offset_se = particles.mean_sd(particles.offset)
-    gain, gain_se = particles.mean_sd(particles.gain)
+    offset, offset_se = particles.centre(particles.offset)
+    gain, gain_se = particles.centre(particles.gain)
     return ScaleAnswer(
-        float(offset),
-        float(gain),
-        float(offset_se),
-        float(gain_se),
+        offset,
+        gain,
+        offset_se,
+        gain_se,
         tuple(f"{a.label} at grey {a.grey:.4g}" for a in marked.anchors),
     )

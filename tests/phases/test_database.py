@@ -1,0 +1,214 @@
+"""Database files: what is read, and how every fault is told."""
+
+from __future__ import annotations
+
+import pytest
+
+from phaseid.errors import InputError
+from phaseid.phases.catalogue import merge
+from phaseid.phases.checks import check
+from phaseid.phases.contexts import Context, ContextTree
+from phaseid.phases.database import DatabaseError, load
+from phaseid.phases.importing import preview, read_sheet, to_yaml, write_database
+from phaseid.phases.oxidation import imbalance
+from phaseid.physics.elements import from_atoms
+
+GOOD = """schema: phaseid-database/1
+name: mine
+phases:
+  - name: Nickel oxide
+    formula: NiO
+    density: [6.6, 6.9]
+    crystal_system: cubic
+    contexts: {steel: common}
+    source: from memory
+  - name: Country NO
+    formula: Fe{1-x}S
+    ranges: {x: [0, 1.7e-1]}
+    contexts: {steel: rare}
+    hazard: "Careful: follow local rules."
+    source: from memory
+"""
+
+
+def write(tmp_path, text, name="mine.yaml"):
+    path = tmp_path / name
+    path.write_text(text, encoding="utf-8")
+    return path
+
+
+def test_reads_what_is_written(tmp_path):
+    database = load(write(tmp_path, GOOD))
+    first, second = database.phases
+    assert first.density_range == (6.6, 6.9)
+    assert first.location.endswith("mine.yaml:4")
+    # Scalars are text: NO is no boolean, and 1.7e-1 is a number where one is wanted.
+    assert second.name == "Country NO"
+    assert second.ranges == {"x": (0.0, 0.17)}
+    assert second.hazard == "Careful: follow local rules."
+
+
+@pytest.mark.parametrize(
+    ("old", "new", "line", "word"),
+    [
+        ("formula: NiO", "formula: NiQq", 5, "no element"),
+        ("density: [6.6, 6.9]", "density: [6.9, 6.6]", 6, "lower end first"),
+        ("density: [6.6, 6.9]", "density: heavy", 6, "must be a number"),
+        ("density: [6.6, 6.9]", "density: 660", 6, "no density"),
+        ("crystal_system: cubic", "crystal_system: round", 7, "use one of cubic"),
+        ("contexts: {steel: common}", "contexts: {steel: often}", 8, "abundance"),
+        ("contexts: {steel: common}", "contexts: [steel]", 8, "must name contexts"),
+        ("    source: from memory\n  - name: C", "  - name: C", 4, "'source' is missing"),
+        ("crystal_system: cubic", "colour: green", 7, "no field 'colour'"),
+        ("    density:", "    formula: NiO\n    density:", 6, "stands twice"),
+        ("name: Country NO", "name: nickel OXIDE", 10, "stands twice"),
+        ("formula: NiO", "formula: &a NiO", 5, "anchors"),
+        ("formula: NiO", "formula: !!python/object:os.system NiO", 5, "tags"),
+        ("ranges: {x: [0, 1.7e-1]}", "ranges: {z: [0, 1]}", 11, "no variable"),
+    ],
+)
+def test_faults_name_file_line_and_remedy(tmp_path, old, new, line, word):
+    assert old in GOOD
+    with pytest.raises(InputError) as raised:
+        load(write(tmp_path, GOOD.replace(old, new, 1)))
+    message = str(raised.value)
+    assert "mine.yaml" in message
+    assert f"line {line}" in message
+    assert word in message
+
+
+def test_all_faults_are_collected(tmp_path):
+    text = GOOD.replace("NiO", "Qq").replace("steel: rare", "steel: never")
+    with pytest.raises(DatabaseError) as raised:
+        load(write(tmp_path, text))
+    assert len(raised.value.faults) == 2
+    assert "1 more" in str(raised.value)
+
+
+@pytest.mark.parametrize(
+    "text",
+    [
+        "",
+        "just text",
+        "schema: phaseid-database/99\nphases: []\n",
+        "schema: [phaseid-database/1]\n",
+        "phases: []\n",
+        "schema: phaseid-database/1\n",
+        "schema: phaseid-database/1\nphases: {a: b}\n",
+        "schema: phaseid-database/1\nphases: [1, 2]\n",
+        "a: [unclosed",
+        "? [complex, key]\n: value\n",
+        "schema: phaseid-database/1\nphases:\n" + "  " + "[" * 4000,
+        "\x00\x01",
+    ],
+)
+def test_hostile_or_wrong_files_are_refused_in_one_sentence(tmp_path, text):
+    with pytest.raises(InputError) as raised:
+        load(write(tmp_path, text))
+    assert "\n" not in str(raised.value)
+    assert "Traceback" not in str(raised.value)
+
+
+def test_expanding_yaml_is_refused_at_once(tmp_path):
+    levels = "".join(f"l{n}: &l{n} [{', '.join([f'*l{n - 1}'] * 9)}]\n" for n in range(1, 30))
+    text = "schema: phaseid-database/1\nl0: &l0 [x, x]\n" + levels
+    with pytest.raises(InputError, match="anchors and aliases"):
+        load(write(tmp_path, text))
+
+
+def test_missing_file_and_binary_file(tmp_path):
+    with pytest.raises(InputError, match="Cannot read"):
+        load(tmp_path / "none.yaml")
+    (tmp_path / "binary.yaml").write_bytes(b"\xff\xfe\x00")
+    with pytest.raises(InputError, match="UTF-8"):
+        load(tmp_path / "binary.yaml")
+
+
+def test_later_database_corrects_an_earlier_one(tmp_path):
+    first = load(write(tmp_path, GOOD))
+    second = load(
+        write(tmp_path, GOOD.replace("6.6", "6.7").replace("name: mine", "name: lab"), "lab.yaml")
+    )
+    catalogue = merge([first, second])
+    assert len(catalogue.phases) == 2
+    assert catalogue.find("nickel  OXIDE").density_range == (6.7, 6.9)
+    assert len(catalogue.replaced) == 2
+    assert catalogue.find("nio").name == "Nickel oxide"
+    with pytest.raises(InputError, match="Did you mean Nickel oxide"):
+        catalogue.find("Nickel oxid")
+
+
+def test_checks_find_what_is_wrong(tmp_path):
+    text = """schema: phaseid-database/1
+name: bad
+phases:
+  - {name: A, formula: Mg2SiO5, contexts: {steel: rare}, source: from memory}
+  - {name: B, formula: Fe2O3, density: 12, contexts: {steel: rare}, source: from memory}
+  - {name: C, formula: PbS, contexts: {steel: rare}, source: from memory}
+  - {name: D, formula: NiS, contexts: {nowhere: rare}, hazard: Careful., source: from memory}
+  - {name: E, formula: MgO, other_names: [A], contexts: {steel: rare}, source: from memory}
+  - {name: F, formula: SiO2, crystal_system: trigonal, contexts: {steel: rare}, source: from memory}
+"""
+    tree = ContextTree([Context("steel", "Steel"), Context("glass", "Glass")])
+    found = check(load(write(tmp_path, text)).phases, tree)
+    told = {(f.phase, f.kind): f.message for f in found}
+    assert "cannot balance" in told["A", "fault"]
+    assert "per atom" in told["B", "fault"]
+    assert "holds Pb" in told["C", "fault"]
+    assert "nowhere" in told["D", "fault"]
+    assert "other name 'A'" in told["E", "fault"]
+    assert "crystalline silica" in told["F", "fault"]
+    assert "no phase is listed" in told["glass", "remark"]
+
+
+def test_charges_of_known_minerals_balance():
+    for formula in (
+        {"Mg": 2, "Si": 1, "O": 4},
+        {"Fe": 3, "O": 4},
+        {"Ca": 5, "P": 3, "O": 13, "H": 1},
+    ):
+        assert imbalance(from_atoms(formula)) == pytest.approx(0, abs=1e-9)
+    assert imbalance(from_atoms({"Mg": 2, "Si": 1, "O": 5})) > 0.1
+    assert imbalance(from_atoms({"Fe": 1, "S": 2})) == 0  # sulphides are excepted
+
+
+def test_sheet_is_previewed_and_written_only_when_clean(tmp_path):
+    tree = ContextTree([Context("steel", "Steel")])
+    catalogue = merge([load(write(tmp_path, GOOD))])
+    sheet = tmp_path / "phases.csv"
+    sheet.write_text(
+        "Phase;Composition;Density (g/cm3);Context;Range\n"
+        "Lab carbide;(Fe{x}Cr{1-x})7C3;6,9-7.1;steel:common;x:0-0.6\n"
+        "Nickel oxide;NiO;6.7;steel;\n"
+        "Wrong;Qq;1;steel;\n"
+        "Far;FeO;1;moon;\n",
+        encoding="utf-8",
+    )
+    found = preview(read_sheet(sheet), catalogue, tree, "lab")
+    assert [p.name for p in found.phases] == ["Lab carbide", "Nickel oxide"]
+    assert found.phases[0].density_range == (6.9, 7.1)
+    assert [(r.row, r.name) for r in found.refused] == [(4, "Wrong"), (5, "Far")]
+    assert found.replaces == ("Nickel oxide",)
+    write_database(tmp_path / "lab.yaml", "lab", found.phases)
+    again = load(tmp_path / "lab.yaml")
+    assert [p.formula for p in again.phases] == [p.formula for p in found.phases]
+    assert again.phases[0].ranges == {"x": (0.0, 0.6)}
+
+
+def test_sheet_as_xlsx(tmp_path):
+    import openpyxl
+
+    book = openpyxl.Workbook()
+    book.active.append(["name", "formula", "density"])
+    book.active.append(["Lab oxide", "Fe3O4", 5.2])
+    book.save(tmp_path / "sheet.xlsx")
+    assert read_sheet(tmp_path / "sheet.xlsx") == [
+        {"name": "Lab oxide", "formula": "Fe3O4", "density": "5.2"}
+    ]
+
+
+def test_written_yaml_repeats_values_instead_of_aliasing(tmp_path):
+    phases = load(write(tmp_path, GOOD)).phases
+    text = to_yaml("x", [phases[0], phases[0]])
+    assert "&" not in text
+    assert "*" not in text
