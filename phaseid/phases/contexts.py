@@ -16,7 +16,8 @@ Floats = NDArray[np.float64]
 
 # Mounting, polishing and coating materials can turn up on any sample.
 EVERYWHERE = "preparation"
-EVERYWHERE_WORD = "rare"
+# Each of the many is unlikely by itself.
+EVERYWHERE_WEIGHT = 0.01
 # A phase that is listed only for a special case of the context: most samples are another case.
 BELOW = 0.3
 
@@ -164,5 +165,5 @@ def _weight(phase: Phase, above: Sequence[str]) -> float:
     below = [ABUNDANCE[w] for p, w in phase.contexts.items() if p.startswith(above[-1] + "/")]
     weight = BELOW * max(below) if below else UNLISTED
     if any(p.split("/")[0] == EVERYWHERE for p in phase.contexts):
-        weight = max(weight, ABUNDANCE[EVERYWHERE_WORD])
+        weight = max(weight, EVERYWHERE_WEIGHT)
     return weight

@@ -329,9 +329,7 @@ def _advice(
     }
     now = candidates.conditions.energy_keV
     others = {
-        energy: knowledge.candidates(
-            replace(candidates.conditions, energy_keV=energy), candidates.extra
-        ).set.mean_signal
+        energy: candidates.signals_at(energy)
         for energy in OTHER_ENERGIES
         if abs(energy - now) > 2.0 and energy > candidates.conditions.detector.lowest_energy_keV + 1
     }

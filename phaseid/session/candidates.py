@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -15,6 +15,7 @@ from phaseid.inference.departure import Departure
 from phaseid.phases.catalogue import fold
 from phaseid.phases.records import Phase
 from phaseid.physics.conditions import Conditions
+from phaseid.physics.signals import signal_under
 from phaseid.session.answers import Candidate
 
 Floats = NDArray[np.float64]
@@ -67,6 +68,8 @@ class Candidates:
         Names, other names and formulas, folded, to phase index.
     extra : tuple of str
         Phases the user gave as formulas.
+    elsewhere : dict
+        Signals at other beam energies, once asked for.
     """
 
     conditions: Conditions
@@ -78,6 +81,7 @@ class Candidates:
     shown: tuple[Shown, ...]
     lookup: Mapping[str, int]
     extra: tuple[str, ...] = ()
+    elsewhere: dict[float, Floats] = field(default_factory=dict, compare=False, repr=False)
 
     def situation(self, contexts: Sequence[str]) -> Situation:
         """What plugins may look at; the hole is not among the phases."""
@@ -89,6 +93,15 @@ class Candidates:
             np.array([s.eta for s in self.shown[:-1]]),
             self.set.mean_signal[:-1],
         )
+
+    def signals_at(self, energy_keV: float) -> Floats:
+        """Mean predicted signal of each phase at another beam energy, all else the same."""
+        if energy_keV not in self.elsewhere:
+            conditions = replace(self.conditions, energy_keV=energy_keV)
+            rows = signal_under(self.set.mass_fractions.astype(float), conditions)
+            rows[-len(VOID_SIGNALS) :] = VOID_SIGNALS
+            self.elsewhere[energy_keV] = self.set.by_phase(self.set.share * rows)
+        return self.elsewhere[energy_keV]
 
     def index(self, text: str) -> int:
         """Index of a phase by name, other name or formula.

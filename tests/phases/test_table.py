@@ -80,7 +80,7 @@ def test_context_weights_are_inherited_down_and_weakly_up():
     assert TREE.weights(["rock"], PHASES)[1] == 0.5
     plain = ContextTree([Context("rock/ore", "Ore")])
     assert plain.weights(["rock"], PHASES)[1] == pytest.approx(BELOW * 0.03)
-    assert TREE.weights(["steel"], PHASES)[2] == 0.03
+    assert TREE.weights(["steel"], PHASES)[2] == 0.01
     assert TREE.weights([], PHASES).tolist() == [1, 1, 1]
     assert TREE.weights(["steel", "rock"], PHASES)[0] == 1.0
 
