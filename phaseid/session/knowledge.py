@@ -4,7 +4,6 @@ from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
 from functools import lru_cache
-from pathlib import Path
 from typing import Any
 
 import numpy as np
@@ -17,8 +16,8 @@ from phaseid.inference.departure import smooth_departure
 from phaseid.inference.evidence import visibility
 from phaseid.phases.catalogue import Catalogue, fold, merge
 from phaseid.phases.contexts import ContextTree
-from phaseid.phases.database import load
 from phaseid.phases.formula import FormulaError, parse
+from phaseid.phases.kept import load_kept
 from phaseid.phases.records import ABUNDANCE, Phase
 from phaseid.phases.table import PhaseTable, build
 from phaseid.physics.conditions import Conditions
@@ -80,10 +79,10 @@ class Knowledge:
         read = []
         for path in host.databases():
             try:
-                read.append(load(path))
+                read.append(load_kept(path))
             except InputError as error:
                 host.report("database", "loading", str(error))
-        read += [load(Path(p)) for p in databases]
+        read += [load_kept(p) for p in databases]
         return cls(host, merge(read), learned if learned is not None else Learned())
 
     def model(self, name: str) -> BackscatterModel | str:

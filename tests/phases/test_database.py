@@ -7,9 +7,11 @@ import pytest
 from phaseid.errors import InputError
 from phaseid.phases.catalogue import merge
 from phaseid.phases.checks import check
+from phaseid.phases.compositions import cache_folder
 from phaseid.phases.contexts import Context, ContextTree
 from phaseid.phases.database import DatabaseError, load
 from phaseid.phases.importing import preview, read_sheet, to_yaml, write_database
+from phaseid.phases.kept import load_kept
 from phaseid.phases.oxidation import imbalance
 from phaseid.physics.elements import from_atoms
 
@@ -212,3 +214,17 @@ def test_written_yaml_repeats_values_instead_of_aliasing(tmp_path):
     text = to_yaml("x", [phases[0], phases[0]])
     assert "&" not in text
     assert "*" not in text
+
+
+def test_kept_records_equal_read_ones_and_follow_the_file(tmp_path, monkeypatch):
+    path = write(tmp_path, GOOD)
+    read, first = load(path), load_kept(path)
+    assert first == read
+    monkeypatch.setattr("phaseid.phases.kept.load", None)
+    assert load_kept(path) == read  # from the cache, to the last field
+    monkeypatch.undo()
+    path.write_text(GOOD.replace("6.6", "6.5"), encoding="utf-8")
+    assert load_kept(path).phases[0].density_range == (6.5, 6.9)
+    for file in cache_folder().glob("database-*.json"):
+        file.write_text("{broken", encoding="utf-8")
+    assert load_kept(path).phases[0].density_range == (6.5, 6.9)
