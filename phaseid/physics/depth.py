@@ -16,6 +16,7 @@ from phaseid.physics.features import (
     feature_fraction,
     feature_relief,
     feature_signal,
+    feature_signal_sd,
     highest_energy_keV,
     smallest_feature_um,
 )
@@ -30,6 +31,7 @@ __all__ = [
     "feature_fraction",
     "feature_relief",
     "feature_signal",
+    "feature_signal_sd",
     "highest_energy_keV",
     "information_depth_um",
     "lateral_radius_um",

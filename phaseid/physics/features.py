@@ -122,6 +122,39 @@ def feature_signal(
     return seen
 
 
+def feature_signal_sd(
+    signal_feature: ArrayLike,
+    signal_matrix: ArrayLike,
+    diameter_um: ArrayLike,
+    range_um_feature: ArrayLike,
+    range_um_matrix: ArrayLike,
+    *,
+    over_disc: bool = False,
+) -> Floats:
+    """Standard deviation of `feature_signal` from what is not known of a feature.
+
+    Parameters
+    ----------
+    signal_feature, signal_matrix, diameter_um, range_um_feature, range_um_matrix, over_disc
+        As for `feature_signal`.
+
+    Returns
+    -------
+    ndarray
+        In the units of the signals: the spread over the three depths of `SHAPES`, and half of what
+        light-in-heavy and heavy-in-light features disagree by in the table, in quadrature.
+    """
+    size = (diameter_um, range_um_feature, range_um_matrix)
+    by_shape = [
+        feature_signal(signal_feature, signal_matrix, *size, shape=shape, over_disc=over_disc)
+        for shape in SHAPES
+    ]
+    step = np.asarray(signal_feature, dtype=np.float64) - np.asarray(signal_matrix, np.float64)
+    pairs = _of_feature("pair_difference", *size, "half-sphere", over_disc=over_disc)
+    sd: Floats = np.hypot(np.std(by_shape, axis=0), step * pairs / 2)
+    return sd
+
+
 def _of_feature(
     what: str,
     diameter_um: ArrayLike,

@@ -12,6 +12,7 @@ from phaseid.physics.depth import (
     feature_fraction,
     feature_relief,
     feature_signal,
+    feature_signal_sd,
     highest_energy_keV,
     smallest_feature_um,
 )
@@ -94,3 +95,12 @@ def test_the_energy_at_which_a_small_feature_can_be_judged() -> None:
     reach = 4.0 * (energy / 20.0) ** 1.67
     assert feature_fraction(1.0, reach, reach) == pytest.approx(0.9, abs=0.02)
     assert 1.0 < energy < 20.0
+
+
+def test_the_unknown_depth_matters_most_for_middling_sizes() -> None:
+    sizes = np.array([0.01, 0.5, 50.0])
+    sd = feature_signal_sd(0.07, 0.2, sizes, 2.0, 1.0)
+    assert sd.shape == (3,)
+    assert sd[1] > 3 * sd[0]
+    assert sd[1] > 3 * sd[2]
+    assert 0.02 < sd[1] / (0.2 - 0.07) < 0.3
