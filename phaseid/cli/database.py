@@ -98,6 +98,8 @@ def _table(options: dict[str, Any]) -> Any:
 
     state = build_state(**options)
     knowledge = Knowledge.load(state.databases)
+    for notice in knowledge.notices():
+        click.echo(f"warning: {notice.message} {notice.remedy}", err=True)
     told = replace(state, energy_keV=state.energy_keV or 20.0)
     conditions, _ = settle(told, [], [], knowledge.model)
     return knowledge, build(knowledge.catalogue.phases, conditions)

@@ -378,7 +378,12 @@ class _Reader:
 
 
 def _dotted(text: str) -> str:
-    """Tell a full stop that joins parts from a decimal point: before water, and between multiplied oxides."""
+    """Tell a full stop that joins parts from a decimal point: before water, and between multiplied oxides.
+
+    Who writes a raised dot anywhere means every full stop as a decimal point.
+    """
+    if any(dot in text for dot in _DOTS):
+        return text
     text = re.sub(r"\.((?:\d+\.)?\d*H2O)", r"·\1", text)
     if re.match(r"\d+(?:\.\d+)?[A-Z]", text):
         text = re.sub(r"(?<=[A-Za-z\d)])\.(?=\d*[A-Z(])", "·", text)

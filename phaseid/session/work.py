@@ -168,6 +168,7 @@ class Session:
         ref = self.state.images[index]
         seen = self.pictures.summary(ref, _edits(self.state, index))
         found = [Notice(f.code, f.message, f.remedy) for f in seen.findings]
+        found += self.knowledge.notices()
         if ref.sha256 and seen.sha256 != ref.sha256:
             found.insert(
                 0,

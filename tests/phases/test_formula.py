@@ -85,6 +85,8 @@ def test_published_hard_formulas(shared_folder):
         ("3Al2O3 * 2SiO2", "Al6Si2O13"),
         ("CaSO4.2H2O", "CaSO6H4"),
         ("CaSO4.0.5H2O", "Ca2S2O9H2"),
+        ("CaSO4·0.5H2O", "Ca2S2O9H2"),
+        ("Mg1.5Fe0.5SiO4·1.5H2O", "Mg1.5Fe0.5SiO5.5H3"),
         ("CaSO4•2H2O", "CaSO6H4"),
         ("Fe2+3Al2(SiO4)3", "Fe3Al2Si3O12"),
         ("Fe²⁺₃Al₂(SiO₄)₃", "Fe3Al2Si3O12"),
