@@ -21,6 +21,8 @@ CHANNELLING_SPAN = 0.25
 SEPARATION = 3.6
 FEW_REGIONS = 14.0
 SMALLEST_REGION = 30
+# The noise law is known to a few per cent.
+NOISE_MARGIN = 1.06
 ZONED = 0.5
 
 
@@ -34,23 +36,27 @@ class Population:
     pixels: float
 
 
-def populations(measured: Measured, labels: list[int]) -> dict[int, Population]:
-    """Region statistics per label, of regions large enough to count."""
+def populations(measured: Measured, noise: NoiseLaw, labels: list[int]) -> dict[int, Population]:
+    """Region statistics per label, of regions large enough to count.
+
+    Where grains grow together into one region, their differences show in the pixels' spread instead.
+    """
     table = measured.regions[measured.regions["interior_pixels"] >= SMALLEST_REGION]
     found = {}
     for k in labels:
+        mean = float(measured.mean[k])
+        variance = float(noise.variance(mean))
+        inner = max(float(measured.sd[k]) ** 2 - NOISE_MARGIN * variance, 0.0)
         mine = table[table["cluster"] == k]
         weight = mine["interior_pixels"].astype(float)
-        if not len(mine):
-            found[k] = Population(float(measured.mean[k]), 0.0, 0.0, float(measured.pixels[k]))
-            continue
-        share = weight / weight.sum()
-        mean = float(share @ mine["grey_mean"])
-        excess = share @ ((mine["grey_mean"] - mean) ** 2 - mine["grey_se"] ** 2)
-        effective = 1.0 / float(np.sum(share**2))
-        found[k] = Population(
-            mean, float(np.sqrt(max(excess, 0.0))), effective, float(measured.pixels[k])
-        )
+        excess, effective = 0.0, 0.0
+        if len(mine):
+            share = weight / weight.sum()
+            mean = float(share @ mine["grey_mean"])
+            excess = float(share @ ((mine["grey_mean"] - mean) ** 2 - mine["grey_se"] ** 2))
+            effective = 1.0 / float(np.sum(share**2))
+        scatter = float(np.sqrt(max(excess, inner, 0.0)))
+        found[k] = Population(mean, scatter, effective, float(measured.pixels[k]))
     return found
 
 
@@ -65,7 +71,7 @@ def channelled(measured: Measured, noise: NoiseLaw, labels: list[int]) -> list[t
     list of (label, label)
         To be merged, in this order.
     """
-    found = populations(measured, labels)
+    found = populations(measured, noise, labels)
     merged: list[tuple[int, int]] = []
     alive = sorted(labels, key=lambda k: found[k].mean)
     span = {k: (found[k].mean, found[k].mean) for k in alive}
@@ -91,12 +97,13 @@ def _apart(a: Population, b: Population, noise: NoiseLaw, span: tuple[float, flo
     grey = max(abs(b.mean), 1e-9)
     if step > CHANNELLING_SHARE * grey or span[1] - span[0] > CHANNELLING_SPAN * grey:
         return np.inf
-    fewest = min(a.regions, b.regions)
-    if fewest < 1.5:
-        return np.inf
+    fewest = max(min(a.regions, b.regions), 1.0)
     # An error of a few per cent of the noise is always there, from borders drawn a little wrong.
     floor = 0.02 * float(noise.sd(b.mean))
     scatter = np.sqrt((a.scatter**2 + b.scatter**2) / 2 + floor**2)
+    if fewest < 3.0:
+        # A single grain has no scatter of its own to show; its neighbours' speaks for it.
+        scatter = np.hypot(max(a.scatter, b.scatter), floor)
     return float(step / scatter / (SEPARATION + FEW_REGIONS / fewest))
 
 

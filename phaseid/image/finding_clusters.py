@@ -24,9 +24,11 @@ from phaseid.image.leftovers import leftover_modes
 from phaseid.image.modes import Mode, find_modes
 from phaseid.image.noise import NoiseLaw, estimate_noise
 from phaseid.image.notices import Finding
-from phaseid.image.rare import RarePhase, Sorted, sort_specks
+from phaseid.image.rare import DEFAULT_BLUR, RarePhase, Sorted, sort_specks
 from phaseid.image.response import Response, response
+from phaseid.image.rows import row_offsets
 from phaseid.image.shading import Shading, surface_from_slopes
+from phaseid.image.specks import STEP as SPECK_STEP
 from phaseid.image.stabilise import NoiseAxis
 
 # Pixels that decide on shading and on what no mode explains; the greys themselves come from all pixels.
@@ -35,8 +37,10 @@ SURVEY_PIXELS = 4_000_000
 LEAST_SHADING = 0.15
 # Loss of entropy that makes a shading believable.
 LEAST_SHARPER = 0.02
-DEFAULT_BLUR = 1.0
 MOST_LABELS = 60
+# What is thin everywhere and covers less than this is lines and specks, not a phase with an inside.
+MOST_THIN = 0.15
+LEAST_LINES = 2e-4
 
 
 @dataclass(frozen=True, eq=False)
@@ -123,13 +127,28 @@ def find_clusters(
     modes, evidence, group = _labelled(canvas, answer, modes, part, warnings, progress)
     position = np.array([m.position for m in modes])
     palette = palette_of(modes, answer.level, float(np.sqrt(noise.correlated_pixels)))
-    blur = border_width(evidence, palette) or DEFAULT_BLUR
-    rare = sort_specks(evidence.specks, position, blur, np.ones(len(position), bool))
+    blur = border_width(evidence, palette)
+    rare = sort_specks(
+        evidence.specks,
+        position,
+        blur,
+        float(answer.level[SPECK_STEP]),
+        (span[0] + 3.0, span[1] - 3.0),
+    )
     part[...] = _grouped(group)[part]
     specks = _stamp(part, rare, group, axis)
     _say_lines(rare, data.size, warnings)
     progress(0.85, "regions")
-    return Found(labels, noise, canvas.shading, crop, tuple(warnings), blur, specks, automatic=True)
+    return Found(
+        labels,
+        noise,
+        canvas.shading,
+        crop,
+        tuple(warnings),
+        blur or DEFAULT_BLUR,
+        specks,
+        automatic=True,
+    )
 
 
 def _span(canvas: Canvas) -> tuple[float, float]:
@@ -164,22 +183,40 @@ def _flattened(
     warnings: list[Finding],
     progress: Callable[[float, str], None],
 ) -> tuple[Canvas, FlatCounts]:
-    """Take shading off if that makes the greys sharper."""
+    """Take off shading, line noise and charging bands where that makes the greys sharper."""
     tiles = _survey(canvas.tiles())
     span = _span(canvas)
-    plain = count_flat(canvas, answer, tiles, span, lambda s: progress(0.02 + 0.06 * s, "shading"))
-    surface = surface_from_slopes(plain.slopes, canvas.data.shape)  # type: ignore[arg-type]
-    if surface is None or surface.amplitude() < LEAST_SHADING:
-        return canvas, plain
-    flat = replace(canvas, shading=surface)
-    counts = count_flat(flat, answer, tiles, span, lambda s: progress(0.08 + 0.06 * s, "shading"))
-    step = _informative(plain)
-    if plain.entropy(step) - counts.entropy(step) < LEAST_SHARPER:
-        return canvas, plain
+
+    def counted(shading: Shading, share: float) -> tuple[Canvas, FlatCounts]:
+        trial = replace(canvas, shading=shading)
+        step = 0.03
+        return trial, count_flat(
+            trial, answer, tiles, span, lambda s: progress(share + step * s, "shading")
+        )
+
+    best, counts = counted(canvas.shading, 0.02)
+    step = _informative(counts)
     middle = float(np.median(canvas.data[::7, ::7]))
-    amount = surface.amplitude() * float(canvas.axis.noise.sd(middle)) * canvas.axis.unit
-    warnings.append(finding_of("shading", amount))
-    return flat, counts
+    unit = float(canvas.axis.noise.sd(middle)) * canvas.axis.unit
+    offsets = row_offsets(canvas)
+    options = [
+        ("line-noise", offsets.lines, offsets.line_sd),
+        ("charging-bands", offsets.bands, offsets.largest_jump),
+    ]
+    for code, lines, amount in options:
+        if lines is None:
+            continue
+        trial, found = counted(replace(canvas.shading, lines=lines), 0.05)
+        if counts.entropy(step) - found.entropy(step) > LEAST_SHARPER:
+            best, counts = trial, found
+            warnings.append(finding_of(code, amount * unit))
+    surface = surface_from_slopes(counts.slopes, best.shading.shape)
+    if surface is not None and surface.amplitude() >= LEAST_SHADING:
+        trial, found = counted(replace(surface, lines=best.shading.lines), 0.11)
+        if counts.entropy(step) - found.entropy(step) > LEAST_SHARPER:
+            best, counts = trial, found
+            warnings.append(finding_of("shading", surface.amplitude() * unit))
+    return best, counts
 
 
 def _informative(counts: FlatCounts) -> int:
@@ -224,7 +261,7 @@ def _labelled(
 def _only_specks(evidence: Evidence) -> NDArray[np.bool_]:
     """Labels that occur in nothing but small regions; these are looked for as specks instead."""
     only = evidence.small > 0.9 * np.maximum(evidence.pixels, 1)
-    only &= evidence.pixels < 0.02 * evidence.pixels.sum()
+    only &= evidence.pixels < MOST_THIN * evidence.pixels.sum()
     if len(only):
         only[np.argmax(evidence.pixels)] = False
     return np.asarray(only)
@@ -251,8 +288,7 @@ def _stamp(
             found[value] = _grey(phase, axis)
         for s in phase.specks:
             box = part[s.row : s.row + s.mask.shape[0], s.column : s.column + s.mask.shape[1]]
-            mask = s.mask[: box.shape[0], : box.shape[1]]
-            box[mask & (box > 0)] = value
+            box[s.mask & (box > 0)] = value
     return found
 
 
@@ -263,9 +299,9 @@ def _grey(phase: RarePhase, axis: NoiseAxis) -> tuple[float, float]:
 
 
 def _say_lines(rare: Sorted, pixels: int, warnings: list[Finding]) -> None:
-    if rare.dark_line_pixels > 1e-4 * pixels:
+    if rare.dark_line_pixels > LEAST_LINES * pixels:
         warnings.append(finding_of("cracks", rare.dark_line_pixels / pixels))
-    if rare.bright_line_pixels > 1e-4 * pixels:
+    if rare.bright_line_pixels > LEAST_LINES * pixels:
         warnings.append(finding_of("scratches", rare.bright_line_pixels / pixels))
     if rare.alone:
         warnings.append(finding_of("lone-specks", float(len(rare.alone))))

@@ -146,6 +146,7 @@ def _gather(
         response,
         tile.inner,
         (tile.rows.start, tile.columns.start),
+        (canvas.data.shape[0], canvas.data.shape[1]),
         out,
     )
     return found

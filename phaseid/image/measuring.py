@@ -18,8 +18,11 @@ from phaseid.image.shading import Shading
 FloatArray = NDArray[np.float64]
 
 STRIP = 256
-# Pixels nearer than this to another label are blends.
-EDGE = 2
+# Pixels nearer to another label than this many standard deviations of the blur are blends.
+EDGE_BLURS = 2.5
+EDGE_LIMITS = (2, 6)
+# Error of any mean from borders drawn a little wrong, as a share of the pixel noise.
+SYSTEMATIC = 0.01
 # Greys of places this far apart are taken as independent of each other.
 BLOCK = 64
 # Above this share of cut-off pixels a mean is only a bound (common practice: about one per cent).
@@ -68,6 +71,7 @@ def measure(
     offset: int,
     ends: tuple[float | None, float | None],
     pixel_size_nm: float | None,
+    blur_px: float = 1.0,
     progress: Callable[[float], None] | None = None,
 ) -> Measured:
     """Measure clusters and regions.
@@ -82,12 +86,15 @@ def measure(
     ends : (float or None, float or None)
         Greys at which the range is cut off.
     pixel_size_nm : float or None
+    blur_px : float
+        Standard deviation of the borders' blur; it decides how far a border reaches.
     progress : callable, optional
 
     Returns
     -------
     Measured
     """
+    reach = int(np.clip(round(EDGE_BLURS * blur_px), *EDGE_LIMITS))
     rows, columns = data.shape
     packed = np.zeros((rows, -(-columns // 8)), dtype=np.uint8)
     parts: list[Runs] = []
@@ -95,7 +102,7 @@ def measure(
     for first in range(0, rows, STRIP):
         last = min(first + STRIP, rows)
         strip = labels[first:last]
-        edge = _edges(labels, first, last)
+        edge = _edges(labels, first, last, reach)
         packed[first:last] = np.packbits(edge, axis=1)
         runs, begins = runs_of(strip, first)
         parts.append(runs)
@@ -109,9 +116,9 @@ def measure(
     return _by_label(runs, total, table, by_run, noise, packed, data.shape)
 
 
-def _edges(labels: NDArray[np.uint8], first: int, last: int) -> NDArray[np.bool_]:
-    top, bottom = max(0, first - EDGE), min(labels.shape[0], last + EDGE)
-    low, high = extreme_labels(labels[top:bottom], EDGE)
+def _edges(labels: NDArray[np.uint8], first: int, last: int, reach: int) -> NDArray[np.bool_]:
+    top, bottom = max(0, first - reach), min(labels.shape[0], last + reach)
+    low, high = extreme_labels(labels[top:bottom], reach)
     inner = slice(first - top, first - top + last - first)
     return np.asarray((low != high)[inner])
 
@@ -251,11 +258,13 @@ def _by_label(
     grey = np.where(thin, sums[5], sums[1])
     counted = np.maximum(total(n), 1.0)
     raw = total(grey) / counted
-    square = total(np.where(thin, runs.pixels * raw[label] ** 2, sums[2])) / counted
-    sd = np.sqrt(np.maximum(square - raw**2, 0.0))
     # Take the shading off in grey units, run by run.
-    flat = grey - n * shading * noise.sd(raw)[label]
+    slant = shading * noise.sd(raw)[label]
+    flat = grey - n * slant
     mean = total(flat) / counted
+    squares = np.where(thin, runs.pixels * raw[label] ** 2, sums[2])
+    square = total(squares - 2 * slant * grey + n * slant**2) / counted
+    sd = np.sqrt(np.maximum(square - mean**2, 0.0))
     deviation = flat - n * mean[label]
     block = (runs.row // BLOCK) * (shape[1] // BLOCK + 1) + (runs.start + runs.stop) // 2 // BLOCK
     se, scatter = np.zeros(256), np.zeros(256)
@@ -268,7 +277,9 @@ def _by_label(
         between = widen * float(np.sqrt(np.sum(by_block**2))) / counted[k] if blocks > 1 else 0.0
         chance = float(noise.sd(mean[k])) * np.sqrt(noise.correlated_pixels / counted[k])
         regional, scatter[k] = _between_regions(table[table["cluster"] == k], mean[k])
-        se[k] = max(between, chance, regional, 1e-9)
+        # Borders drawn a little wrong leave an error that no number of pixels averages away.
+        fixed = SYSTEMATIC * float(noise.sd(mean[k]))
+        se[k] = max(float(np.hypot(max(between, chance, regional), fixed)), 1e-9)
     share = np.maximum(interior, 1.0)
     return Measured(
         pixels,

@@ -76,8 +76,8 @@ def find_modes(
     found: list[Mode] = []
     for step in range(STEPS, 0, -1):
         for mode in _modes_of(flat, response, step, correlated, quantum):
-            apart = NEAREST * max(response.level[step], mode.spread)
-            if all(abs(mode.position - m.position) > apart for m in found):
+            apart = NEAREST * max(float(response.level[step]), mode.spread)
+            if all(abs(mode.position - m.position) > max(apart, NEAREST * m.spread) for m in found):
                 found.append(mode)
     return sorted(found, key=lambda m: m.position)
 

@@ -102,7 +102,7 @@ def estimate_noise(data: NDArray[Any]) -> NoiseLaw:
     width = np.array([np.ptp(grey[part]) for part in parts]) + 1e-9
     weight = np.minimum(1.0, np.median(width) / width) * [len(pick) for pick in picks]
     constant, slope = _line(level, variance, weight)
-    near = np.abs(variance / np.maximum(constant + slope * level, 1e-300) - 1) < 0.3
+    near = np.abs(variance - (constant + slope * level)) <= 0.3 * (constant + slope * level)
     quiet = np.concatenate([p for p, n in zip(picks, near, strict=True) if n] or picks)
     row = _correlation(rows[:, quiet])
     column = _correlation(columns[:, quiet])

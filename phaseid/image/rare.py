@@ -8,7 +8,8 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from phaseid.image.specks import Speck, deblurred
+from phaseid.image.contrast import contrast_of
+from phaseid.image.specks import STEP, Speck
 
 FloatArray = NDArray[np.float64]
 
@@ -18,10 +19,14 @@ FEWEST_PIXELS = 20
 ALONE_PIXELS = 40
 # Specks agree if their greys differ by less than this many standard errors.
 AGREEMENT = 2.5
-# Error of a speck's contrast from its unknown shape, as a share of the contrast.
-SHAPE_ERROR = 0.12
+# Error of a contrast from the unknown shapes and blur, as a share of it.
+SHAPE_ERROR = 0.04
+BLUR_ERROR = 0.25
+DEFAULT_BLUR = 1.0
 # Where lines hold this many times the pixels of round specks, the round ones are pieces of lines.
 LINES_OVER_SPECKS = 3.0
+# Shorter ones are odd-shaped grains.
+LINE_LENGTH = 25.0
 
 
 @dataclass(frozen=True)
@@ -54,7 +59,11 @@ class Sorted:
 
 
 def sort_specks(
-    specks: Sequence[Speck], position: FloatArray, blur_px: float, used: NDArray[np.bool_]
+    specks: Sequence[Speck],
+    position: FloatArray,
+    blur_px: float | None,
+    height_se: float,
+    span: tuple[float, float],
 ) -> Sorted:
     """Group specks by their own grey.
 
@@ -63,17 +72,20 @@ def sort_specks(
     specks : sequence of Speck
     position : ndarray
         Of the labels, on the noise axis.
-    blur_px : float
-    used : ndarray of bool
-        Labels that are phases.
+    blur_px : float or None
+        None where no border of the image tells it.
+    height_se : float
+        Standard error of a speck's height.
+    span : (float, float)
+        Greys that occur, on the noise axis: no phase lies outside.
 
     Returns
     -------
     Sorted
     """
     lines = [s for s in specks if s.long]
-    dark = sum(s.pixels for s in lines if s.height < 0)
-    bright = sum(s.pixels for s in lines if s.height > 0)
+    dark = sum(s.pixels for s in lines if s.height < 0 and s.length > LINE_LENGTH)
+    bright = sum(s.pixels for s in lines if s.height > 0 and s.length > LINE_LENGTH)
     round_ones = [s for s in specks if not s.long]
     for sign, line in ((-1.0, dark), (1.0, bright)):
         same = [s for s in round_ones if s.height * sign > 0]
@@ -81,7 +93,7 @@ def sort_specks(
             round_ones = [s for s in round_ones if s.height * sign <= 0]
     if not round_ones:
         return Sorted((), dark, bright, ())
-    own, error = _greys(round_ones, position, blur_px)
+    own, error = _greys(round_ones, position, blur_px, height_se, span)
     phases, alone = [], []
     for members in _groups(own, error, np.array([s.pixels for s in round_ones], float)):
         chosen = tuple(round_ones[i] for i in members)
@@ -90,25 +102,49 @@ def sort_specks(
         if not enough and pixels < ALONE_PIXELS:
             alone.extend(chosen)
             continue
-        weight = 1.0 / error[members] ** 2
-        mean = float(weight @ own[members] / weight.sum())
-        scatter = float(np.sqrt(weight @ (own[members] - mean) ** 2 / weight.sum()))
-        se = max(1.0 / np.sqrt(weight.sum()), scatter / np.sqrt(len(members)))
-        phases.append(RarePhase(mean, float(se), chosen, _same(mean, se, chosen, position, used)))
+        mean, se = _common(chosen, position, blur_px, height_se, span)
+        phases.append(RarePhase(mean, se, chosen, _same(mean, se, chosen, position)))
     return Sorted(tuple(phases), dark, bright, tuple(alone))
 
 
 def _greys(
-    specks: Sequence[Speck], position: FloatArray, blur_px: float
+    specks: Sequence[Speck],
+    position: FloatArray,
+    blur_px: float | None,
+    height_se: float,
+    span: tuple[float, float],
 ) -> tuple[FloatArray, FloatArray]:
-    own, error = [], []
-    for s in specks:
-        radius, contrast = deblurred(abs(s.flux), abs(s.height), blur_px)
-        sign = 1.0 if s.height > 0 else -1.0
-        own.append(position[s.matrix] + sign * contrast)
-        area = max(np.pi * radius**2, 4.0)
-        error.append(np.hypot(np.sqrt(s.reach) / area, SHAPE_ERROR * contrast))
-    return np.array(own), np.array(error)
+    """Grey of each speck by itself, and its error."""
+    found = [_common((s,), position, blur_px, height_se, span) for s in specks]
+    return np.array([f[0] for f in found]), np.array([f[1] for f in found])
+
+
+def _common(
+    specks: Sequence[Speck],
+    position: FloatArray,
+    blur_px: float | None,
+    height_se: float,
+    span: tuple[float, float],
+) -> tuple[float, float]:
+    """Grey that the specks share: each matrix gives one estimate of it, and the best are averaged."""
+    means, errors = [], []
+    keys = {(s.matrix, s.height > 0) for s in specks}
+    for matrix, bright in keys:
+        mine = [s for s in specks if (s.matrix, s.height > 0) == (matrix, bright)]
+        contrast, se = contrast_of(
+            np.array([abs(s.flux) for s in mine]),
+            np.sqrt(np.array([float(s.reach) for s in mine])),
+            np.array([abs(s.height) for s in mine]),
+            height_se,
+            DEFAULT_BLUR if blur_px is None else blur_px,
+            STEP,
+        )
+        means.append(position[matrix] + (contrast if bright else -contrast))
+        shape = SHAPE_ERROR if blur_px is not None else BLUR_ERROR
+        errors.append(np.hypot(se, shape * contrast))
+    weight = 1.0 / np.array(errors) ** 2
+    mean = float(weight @ np.array(means) / weight.sum())
+    return float(np.clip(mean, *span)), float(1.0 / np.sqrt(weight.sum()))
 
 
 def _groups(own: FloatArray, error: FloatArray, weight: FloatArray) -> list[NDArray[np.intp]]:
@@ -131,11 +167,9 @@ def _same(
     se: float,
     specks: Sequence[Speck],
     position: FloatArray,
-    used: NDArray[np.bool_],
 ) -> int | None:
     matrices = {s.matrix for s in specks}
     distance = np.abs(position - mean)
-    distance[~used] = np.inf
     if len(matrices) == 1:
         distance[list(matrices)] = np.inf
     nearest = int(np.argmin(distance))

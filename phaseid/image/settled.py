@@ -100,6 +100,7 @@ def _measured(
         found.crop[0],
         ends,
         image.pixel_size_nm,
+        found.blur_px,
     )
 
 

@@ -29,6 +29,7 @@ BORDER = 4
 LONGEST = 3.5
 LONG_PIXELS = 9.0
 MOST_PER_TILE = 400
+MOST_BORDER = 0.25
 
 
 @dataclass(frozen=True)
@@ -51,6 +52,8 @@ class Speck:
         Pixels over which the flux was summed.
     long : bool
         Crack or scratch rather than a grain.
+    length : float
+        In pixels, along its long axis.
     """
 
     row: int
@@ -61,6 +64,7 @@ class Speck:
     height: float
     reach: int
     long: bool
+    length: float
 
     @property
     def pixels(self) -> int:
@@ -96,6 +100,7 @@ def find_specks(
     response: Response,
     inner: tuple[slice, slice],
     origin: tuple[int, int],
+    shape: tuple[int, int],
     left_out: NDArray[np.bool_] | None,
 ) -> list[Speck]:
     """Find the specks of one tile.
@@ -113,6 +118,8 @@ def find_specks(
         Specks whose brightest pixel lies elsewhere belong to the neighbouring tile.
     origin : (int, int)
         Of the inner part, in the image.
+    shape : (int, int)
+        Of the image; what its frame cuts is no speck, for nothing tells what it is part of.
     left_out : ndarray of bool or None
 
     Returns
@@ -135,7 +142,12 @@ def find_specks(
     if weak.mean() > 0.2:
         return []
     numbered, count = ndimage.label(weak, structure=np.ones((3, 3), bool))
+    # What reaches into the blurred zone along a border is part of that border.
+    mixed = low != high
+    size = np.bincount(numbered.ravel(), minlength=count + 1)
+    at_border = np.bincount(numbered[mixed], minlength=count + 1)
     hit = np.unique(numbered[strong])
+    hit = hit[at_border[hit] <= MOST_BORDER * size[hit]]
     hit = hit[hit > 0][:MOST_PER_TILE]
     boxes = ndimage.find_objects(numbered)
     found = []
@@ -144,7 +156,7 @@ def find_specks(
         speck = _describe(
             numbered, int(number), boxes[number - 1], excess, fine, around, inner, origin
         )
-        if speck is not None:
+        if speck is not None and _inside(speck, shape):
             found.append(speck)
     return found
 
@@ -161,7 +173,8 @@ def _describe(
 ) -> Speck | None:
     inside = numbered[box] == number
     pixels = int(inside.sum())
-    if pixels > 4 * LARGEST:
+    long = _is_long(inside)
+    if pixels > LARGEST and not long:
         return None
     local = np.where(inside, np.abs(excess[box]), 0.0)
     peak = np.unravel_index(int(np.argmax(local)), local.shape)
@@ -185,8 +198,17 @@ def _describe(
         sign * flux,
         sign * height,
         int(near.sum()),
-        _is_long(inside),
+        long,
+        4.0 * _axes(inside)[0],
     )
+
+
+def _inside(speck: Speck, shape: tuple[int, int]) -> bool:
+    if speck.long:
+        return True
+    ends = (speck.row + speck.mask.shape[0], speck.column + speck.mask.shape[1])
+    starts = (speck.row, speck.column)
+    return all(a >= 1 and b <= n - 1 for a, b, n in zip(starts, ends, shape, strict=True))
 
 
 def _grown_box(box: tuple[slice, slice], by: int, shape: tuple[int, ...]) -> tuple[slice, slice]:
@@ -218,23 +240,3 @@ def _is_long(mask: NDArray[np.bool_]) -> bool:
     return spread > LONG_PIXELS and (
         large > LONGEST * small or pixels < 0.35 * np.pi / 4 * (4 * large) * (4 * small)
     )
-
-
-def deblurred(flux: float, height: float, blur_px: float) -> tuple[float, float]:
-    """Radius and contrast of the disc whose blurred image has this flux and this height.
-
-    The image was smoothed by the signal volume and by `STEP` steps of the filter; a disc of radius r and
-    contrast A has the flux pi r^2 A and, blurred by s, the height A (1 - exp(-r^2 / 2 s^2)).
-    """
-    variance = blur_px**2 + 0.5 * sum(4**k for k in range(STEP))
-    ratio = max(flux, 0.0) / max(height, 1e-9)
-    low, high = 0.05, 60.0
-    for _ in range(50):
-        r = 0.5 * (low + high)
-        if np.pi * r * r / -np.expm1(-r * r / (2 * variance)) < ratio:
-            low = r
-        else:
-            high = r
-    # Below a radius of one pixel the contrast cannot be told from the size.
-    r = max(0.5 * (low + high), 1.2)
-    return r, height / -float(np.expm1(-r * r / (2 * variance)))

@@ -1,0 +1,124 @@
+"""Offsets from row to row: line noise, and bands that charge."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from phaseid.image.canvas import Canvas
+
+FloatArray = NDArray[np.float64]
+
+LAGS = (1, 2, 4, 8, 16)
+MOST_COLUMNS = 1024
+STRIP = 256
+# A difference beyond this many noise standard deviations is a border, not an offset.
+CLIP = 4.0
+# Rows scatter by chance; this many times more is line noise, this many standard errors a jump.
+LINE_EXCESS = 1.6
+JUMP = 9.0
+LEAST_JUMP = 0.5
+LINE_REACH = 12.0
+BAND_REACH = 0.12
+
+
+@dataclass(frozen=True, eq=False)
+class RowOffsets:
+    """Offsets of the rows, on the noise axis.
+
+    Attributes
+    ----------
+    lines : ndarray of shape (rows,) or None
+        What changes from row to row.
+    bands : ndarray of shape (rows,) or None
+        The same with what lasts for many rows after a jump.
+    line_sd : float
+    largest_jump : float
+    """
+
+    lines: FloatArray | None
+    bands: FloatArray | None
+    line_sd: float
+    largest_jump: float
+
+
+def row_offsets(canvas: Canvas) -> RowOffsets:
+    """Estimate row offsets from differences between rows a few apart.
+
+    Parameters
+    ----------
+    canvas : Canvas
+
+    Returns
+    -------
+    RowOffsets
+    """
+    rows = canvas.data.shape[0]
+    if rows < 4 * LAGS[-1]:
+        return RowOffsets(None, None, 0.0, 0.0)
+    step = max(1, canvas.data.shape[1] // MOST_COLUMNS)
+    columns = len(range(0, canvas.data.shape[1], step))
+    error = np.sqrt(2.0 / columns * (1.0 if step > 3 else 1 + 2 * sum(canvas.axis.noise.row)))
+    differences = _differences(canvas, step)
+    first = differences[0]
+    middle = float(np.median(first))
+    scatter = 1.4826 * float(np.median(np.abs(first - middle)))
+    profile = _integrated(differences, rows)
+    lines = profile - _lowpass(profile, LINE_REACH)
+    line_sd = 1.4826 * float(np.median(np.abs(lines)))
+    lines = np.clip(lines, -5 * max(line_sd, error), 5 * max(line_sd, error))
+    noisy = scatter > LINE_EXCESS * error and line_sd > 0.03
+    threshold = max(JUMP * max(scatter, error), LEAST_JUMP)
+    jumps = np.abs(first) > threshold
+    bands = profile - _lowpass(profile, BAND_REACH * rows) if jumps.any() else None
+    largest = float(np.abs(first[jumps]).max()) if jumps.any() else 0.0
+    return RowOffsets(lines if noisy else None, bands, line_sd, largest)
+
+
+def _differences(canvas: Canvas, step: int) -> list[FloatArray]:
+    """Mean of the clipped differences between rows, per lag."""
+    rows = canvas.data.shape[0]
+    found: list[FloatArray] = [np.zeros(rows - lag) for lag in LAGS]
+    table = canvas.axis.table(canvas.data.dtype)
+    for first in range(0, rows, STRIP):
+        raw = canvas.data[first : first + STRIP + LAGS[-1], ::step]
+        z = canvas.axis.forward(raw) if table is None else table[raw]
+        for n, lag in enumerate(LAGS):
+            stop = min(STRIP, rows - lag - first)
+            if stop <= 0:
+                continue
+            difference = z[lag : lag + stop] - z[:stop]
+            # The bulk of the columns stays in its phase: centre on it, then average it.
+            middle = np.median(difference, axis=1, keepdims=True)
+            difference -= middle
+            np.clip(difference, -CLIP, CLIP, out=difference)
+            found[n][first : first + stop] = difference.mean(axis=1) + middle[:, 0]
+    return found
+
+
+def _integrated(differences: list[FloatArray], rows: int) -> FloatArray:
+    """Profile whose differences at all lags fit best, by banded normal equations."""
+    from scipy.linalg import solveh_banded
+
+    band = np.zeros((LAGS[-1] + 1, rows))
+    right = np.zeros(rows)
+    band[0] += 1e-9
+    for lag, difference in zip(LAGS, differences, strict=True):
+        weight = 1.0 / (1.0 + lag / 8.0)
+        band[0, :-lag] += weight
+        band[0, lag:] += weight
+        band[lag, : rows - lag] -= weight
+        right[lag:] += weight * difference
+        right[:-lag] -= weight * difference
+    profile = solveh_banded(band, right, lower=True)
+    return np.asarray(profile - profile.mean())
+
+
+def _lowpass(profile: FloatArray, reach: float) -> FloatArray:
+    size = int(3 * reach)
+    offsets = np.arange(-size, size + 1)
+    kernel = np.exp(-0.5 * (offsets / reach) ** 2)
+    padded = np.pad(profile, size, mode="reflect" if len(profile) > size else "symmetric")
+    return np.convolve(padded, kernel / kernel.sum(), mode="valid")
