@@ -88,9 +88,9 @@ def against_measurements(axes: Axes, electrons: int) -> None:
             f"laboratories: sd {np.std(means, ddof=1):5.1%} ({len(laboratories)})  "
             f"eta(20 keV) {formula:.3f}"
         )
-    axes.set(xlabel="beam energy / keV", ylabel="eta", ylim=(0, None))
+    axes.set(xlabel="beam energy / keV", ylabel="eta", ylim=(0, 0.62))
     axes.set_title("points: measured; dashed: August & Wernisch")
-    axes.legend(fontsize=7)
+    axes.legend(fontsize=7, loc="upper center", ncols=4)
 
 
 def against_elements(axes: Axes, energy_axes: Axes, electrons: int) -> tuple[Any, Any]:
