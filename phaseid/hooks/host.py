@@ -84,7 +84,8 @@ class PluginHost:
             self._manager.register(plugin, name)
             self._manager.check_pending()
         except Exception as error:
-            self._manager.unregister(plugin)
+            if self._manager.get_plugin(name) is plugin:
+                self._manager.unregister(plugin)
             self._problem(name, "loading", _said(error))
 
     def add_module(self, module: str, origin: str) -> None:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import itertools
 import os
 from collections.abc import Callable, Iterable, Iterator
 from concurrent.futures import FIRST_COMPLETED, Future, ThreadPoolExecutor, wait
@@ -52,12 +53,15 @@ class Canvas:
     shading : Shading
     outside : ndarray of bool or None
         Pixels left out.
+    muted : ndarray of bool, shape (rows,), or None
+        Rows that are labelled but tell nothing about the phases, such as charging bands.
     """
 
     data: NDArray[Any]
     axis: NoiseAxis
     shading: Shading
     outside: NDArray[np.bool_] | None = None
+    muted: NDArray[np.bool_] | None = None
 
     def tiles(self) -> list[Tile]:
         """Tiles of about 480 pixels that cover the image."""
@@ -78,10 +82,7 @@ class Canvas:
     def greys(self, tile: Tile, table: FloatImage | None) -> FloatImage:
         """Positions on the noise axis, shading taken off, of a tile with its margin."""
         raw = self.raw(tile)
-        if table is not None:
-            z = table[raw]
-        else:
-            z = self.axis.forward(raw).astype(np.float32)
+        z = self.axis.forward(raw).astype(np.float32) if table is None else table[raw]
         if not self.shading.none:
             top, left = tile.inner[0].start, tile.inner[1].start
             z -= self.shading.over(
@@ -91,10 +92,14 @@ class Canvas:
 
     def left_out(self, tile: Tile) -> NDArray[np.bool_] | None:
         """Pixels left out of a tile with its margin; None if there are none."""
-        if self.outside is None:
-            return None
-        part = self.around(self.outside, tile)
-        return part if part.any() else None
+        out = None
+        if self.outside is not None:
+            out = self.around(self.outside, tile)
+        if self.muted is not None:
+            shape = (self.data.shape[0], self.data.shape[1])
+            rows = self.around(np.broadcast_to(self.muted[:, None], shape), tile)
+            out = rows if out is None else out | rows
+        return out if out is not None and out.any() else None
 
     def around(self, array: NDArray[Any], tile: Tile) -> NDArray[Any]:
         """A tile of any image of the same shape, with margin."""
@@ -117,7 +122,7 @@ class Canvas:
 def _cuts(length: int) -> list[tuple[int, int]]:
     number = max(1, round(length / TILE))
     edges = np.linspace(0, length, number + 1).astype(int)
-    return [(int(a), int(b)) for a, b in zip(edges[:-1], edges[1:], strict=True)]
+    return [(int(a), int(b)) for a, b in itertools.pairwise(edges)]
 
 
 def in_parallel(work: Callable[[Tile], Result], tiles: Iterable[Tile]) -> Iterator[Result]:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import itertools
 from dataclasses import dataclass
 
 import numpy as np
@@ -77,7 +78,7 @@ def channelled(measured: Measured, noise: NoiseLaw, labels: list[int]) -> list[t
     span = {k: (found[k].mean, found[k].mean) for k in alive}
     while len(alive) > 1:
         best, pair = np.inf, -1
-        for n, (a, b) in enumerate(zip(alive[:-1], alive[1:], strict=True)):
+        for n, (a, b) in enumerate(itertools.pairwise(alive)):
             score = _apart(found[a], found[b], noise, (span[a][0], span[b][1]))
             if score < best:
                 best, pair = score, n

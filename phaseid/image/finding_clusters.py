@@ -4,7 +4,6 @@ from __future__ import annotations
 
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, field, replace
-from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -41,6 +40,11 @@ MOST_LABELS = 60
 # What is thin everywhere and covers less than this is lines and specks, not a phase with an inside.
 MOST_THIN = 0.15
 LEAST_LINES = 2e-4
+# Pores are darker than the commonest phase by this share of all greys, and this many noises.
+VOID_SHARE = 0.35
+VOID_STEP = 8.0
+# Rows corrected by more than this many noise standard deviations are not trusted.
+MUTED = 0.25
 
 
 @dataclass(frozen=True, eq=False)
@@ -62,6 +66,8 @@ class Found:
         Clusters this was made from, where it was.
     automatic : bool
         Whether clusters may still be merged.
+    muted : ndarray of bool or None
+        Rows of the crop whose greys do not count.
     """
 
     labels: NDArray[np.uint8]
@@ -73,6 +79,7 @@ class Found:
     specks: Mapping[int, tuple[float, float]] = field(default_factory=dict)
     before: Mapping[int, Cluster] = field(default_factory=dict)
     automatic: bool = False
+    muted: NDArray[np.bool_] | None = None
 
 
 def find_clusters(
@@ -128,12 +135,14 @@ def find_clusters(
     position = np.array([m.position for m in modes])
     palette = palette_of(modes, answer.level, float(np.sqrt(noise.correlated_pixels)))
     blur = border_width(evidence, palette)
+    void = _void(evidence, palette, group)
     rare = sort_specks(
         evidence.specks,
         position,
         blur,
         float(answer.level[SPECK_STEP]),
         (span[0] + 3.0, span[1] - 3.0),
+        void,
     )
     part[...] = _grouped(group)[part]
     specks = _stamp(part, rare, group, axis)
@@ -195,7 +204,6 @@ def _flattened(
         )
 
     best, counts = counted(canvas.shading, 0.02)
-    step = _informative(counts)
     middle = float(np.median(canvas.data[::7, ::7]))
     unit = float(canvas.axis.noise.sd(middle)) * canvas.axis.unit
     offsets = row_offsets(canvas)
@@ -207,24 +215,19 @@ def _flattened(
         if lines is None:
             continue
         trial, found = counted(replace(canvas.shading, lines=lines), 0.05)
-        if counts.entropy(step) - found.entropy(step) > LEAST_SHARPER:
+        if counts.bluntness() - found.bluntness() > LEAST_SHARPER:
             best, counts = trial, found
             warnings.append(finding_of(code, amount * unit))
+            if code == "charging-bands":
+                best = replace(best, muted=np.abs(lines) > MUTED)
     surface = surface_from_slopes(counts.slopes, best.shading.shape)
     if surface is not None and surface.amplitude() >= LEAST_SHADING:
         trial, found = counted(replace(surface, lines=best.shading.lines), 0.11)
-        if counts.entropy(step) - found.entropy(step) > LEAST_SHARPER:
+        trial = replace(trial, muted=best.muted)
+        if counts.bluntness() - found.bluntness() > LEAST_SHARPER:
             best, counts = trial, found
             warnings.append(finding_of("shading", surface.amplitude() * unit))
     return best, counts
-
-
-def _informative(counts: FlatCounts) -> int:
-    """Coarsest scale at which a fair share of the image is flat."""
-    for step in range(STEPS, 1, -1):
-        if counts.share(step) > 0.05:
-            return step
-    return 1
 
 
 def _labelled(
@@ -258,6 +261,20 @@ def _labelled(
     return modes, evidence, np.where(verdict.group < 0, np.arange(len(modes)), verdict.group)
 
 
+def _void(evidence: Evidence, palette: Palette, group: NDArray[np.intp]) -> int | None:
+    """The darkest label, if it is far darker than the commonest one: most likely pores."""
+    common = int(np.argmax(evidence.pixels))
+    darkest = int(np.argmin(palette.position))
+    if group[darkest] == group[common]:
+        return None
+    reach = float(palette.position[-1] - palette.position[darkest])
+    away = float(palette.position[common] - palette.position[darkest])
+    rough = (
+        palette.variance[darkest] > 1.2 or evidence.pixels[darkest] < 0.25 * evidence.pixels.sum()
+    )
+    return darkest if rough and away > VOID_SHARE * reach and away > VOID_STEP else None
+
+
 def _only_specks(evidence: Evidence) -> NDArray[np.bool_]:
     """Labels that occur in nothing but small regions; these are looked for as specks instead."""
     only = evidence.small > 0.9 * np.maximum(evidence.pixels, 1)
@@ -278,7 +295,7 @@ def _stamp(
 ) -> dict[int, tuple[float, float]]:
     """Write the specks into the label map."""
     found: dict[int, tuple[float, float]] = {}
-    label = int(len(group))
+    label = len(group)
     for phase in rare.phases:
         if phase.label is not None:
             value = int(group[phase.label]) + 1

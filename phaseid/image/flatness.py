@@ -59,11 +59,16 @@ class FlatCounts:
         """Middle of each bin."""
         return self.low + (np.arange(len(self.counts[step])) + 0.5) * self.width[step]
 
-    def entropy(self, step: int) -> float:
-        """Entropy of the flat greys; sharper peaks give less."""
+    def bluntness(self) -> float:
+        """Entropy of the flat greys, less the logarithm of their share: lower is sharper.
+
+        Taken at the second scale, where all but small grains have flat places.
+        """
+        step = 2 if self.share(2) > 0.1 else 1
         p = self.counts[step] / max(self.counts[step].sum(), 1)
         p = p[p > 0]
-        return float(-(p * np.log(p / self.width[step])).sum())
+        entropy = float(-(p * np.log(p / self.width[step])).sum())
+        return entropy - float(np.log(max(self.share(step), 1e-9)))
 
 
 def count_flat(

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import itertools
 from dataclasses import dataclass
 
 import numpy as np
@@ -57,7 +58,7 @@ def judge_borders(evidence: Evidence, palette: Palette) -> Verdict:
     group = np.arange(number)
     step, contacts = evidence.step - evidence.step.T, evidence.contacts + evidence.contacts.T
     kept = np.flatnonzero(~blend)
-    for a, b in zip(kept[:-1], kept[1:], strict=True):
+    for a, b in itertools.pairwise(kept):
         if contacts[a, b] < FEWEST_CONTACTS:
             continue
         expected = palette.position[b] - palette.position[a]

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import itertools
 from collections.abc import Sequence
 
 import numpy as np
@@ -83,7 +84,7 @@ def _broad_modes(counts: FloatArray, edges: FloatArray, pixels: int) -> list[Mod
     while len(peaks) > 1:
         depth = [
             density[a : b + 1].min() / min(density[a], density[b])
-            for a, b in zip(peaks[:-1], peaks[1:], strict=True)
+            for a, b in itertools.pairwise(peaks)
         ]
         shallow = int(np.argmax(depth))
         if depth[shallow] < VALLEY and len(peaks) <= MOST:
@@ -91,13 +92,11 @@ def _broad_modes(counts: FloatArray, edges: FloatArray, pixels: int) -> list[Mod
         drop = shallow if density[peaks[shallow]] < density[peaks[shallow + 1]] else shallow + 1
         del peaks[drop]
     cuts = [0]
-    cuts += [
-        a + int(np.argmin(density[a : b + 1])) for a, b in zip(peaks[:-1], peaks[1:], strict=True)
-    ]
+    cuts += [a + int(np.argmin(density[a : b + 1])) for a, b in itertools.pairwise(peaks)]
     cuts.append(len(counts))
     centres = (edges[1:] + edges[:-1]) / 2
     modes = []
-    for a, b in zip(cuts[:-1], cuts[1:], strict=True):
+    for a, b in itertools.pairwise(cuts):
         weight = counts[a:b]
         if weight.sum() < 0.25 * LEAST_SHARE * pixels:
             continue

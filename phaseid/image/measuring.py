@@ -72,6 +72,7 @@ def measure(
     ends: tuple[float | None, float | None],
     pixel_size_nm: float | None,
     blur_px: float = 1.0,
+    muted: NDArray[np.bool_] | None = None,
     progress: Callable[[float], None] | None = None,
 ) -> Measured:
     """Measure clusters and regions.
@@ -88,6 +89,8 @@ def measure(
     pixel_size_nm : float or None
     blur_px : float
         Standard deviation of the borders' blur; it decides how far a border reaches.
+    muted : ndarray of bool, shape (rows of the part,), optional
+        Rows whose greys do not count.
     progress : callable, optional
 
     Returns
@@ -103,6 +106,8 @@ def measure(
         last = min(first + STRIP, rows)
         strip = labels[first:last]
         edge = _edges(labels, first, last, reach)
+        if muted is not None:
+            edge[_muted_rows(muted, offset, first, last)] = True
         packed[first:last] = np.packbits(edge, axis=1)
         runs, begins = runs_of(strip, first)
         parts.append(runs)

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import itertools
 from collections.abc import Callable
 from dataclasses import dataclass
 
@@ -102,7 +103,7 @@ def _modes_of(
             width = QUANTUM_SMOOTHING * float(step_of[coarse].max()) / flat.width[step]
             density = np.where(coarse, smooth_counts(counts, width), density)
     # Places within two standard deviations: what a peak of a pure phase holds.
-    window = max(3, int(round(4 * sd)))
+    window = max(3, round(4 * sd))
     places = density * window / area
     peaks = _persistent(density, places)
     modes = []
@@ -131,7 +132,7 @@ def _persistent(density: FloatArray, places: FloatArray) -> list[tuple[int, int,
     if not peaks:
         return [(0, int(np.argmax(density)), len(density) - 1)]
     valleys = [0]
-    for a, b in zip(peaks[:-1], peaks[1:], strict=True):
+    for a, b in itertools.pairwise(peaks):
         valleys.append(a + int(np.argmin(density[a : b + 1])))
     valleys.append(len(density) - 1)
     # Remove the least convincing valley until all that remain convince.

@@ -16,7 +16,12 @@ FloatArray = NDArray[np.float64]
 # What a phase needs to be believed: several specks that agree, or one that is large.
 FEWEST = 3
 FEWEST_PIXELS = 20
-ALONE_PIXELS = 40
+ALONE_PIXELS = 100
+# Where there are pores, small dark spots are pores too, unless many of them agree well.
+MANY = 6
+AGREE_WELL = 1.5
+# Greys of small specks are uncertain by this share of their contrast whatever the statistics say.
+CONTRAST_SHARE = 0.15
 # Specks agree if their greys differ by less than this many standard errors.
 AGREEMENT = 2.5
 # Error of a contrast from the unknown shapes and blur, as a share of it.
@@ -64,6 +69,7 @@ def sort_specks(
     blur_px: float | None,
     height_se: float,
     span: tuple[float, float],
+    void: int | None = None,
 ) -> Sorted:
     """Group specks by their own grey.
 
@@ -78,6 +84,8 @@ def sort_specks(
         Standard error of a speck's height.
     span : (float, float)
         Greys that occur, on the noise axis: no phase lies outside.
+    void : int, optional
+        Label of pores, if there are any.
 
     Returns
     -------
@@ -103,7 +111,12 @@ def sort_specks(
             alone.extend(chosen)
             continue
         mean, se = _common(chosen, position, blur_px, height_se, span)
-        phases.append(RarePhase(mean, se, chosen, _same(mean, se, chosen, position)))
+        label = _same(mean, se, chosen, position)
+        if label is None and void is not None and mean < min(position[s.matrix] for s in chosen):
+            misfit = float(np.mean(((own[members] - mean) / error[members]) ** 2))
+            if len(chosen) < MANY or misfit > AGREE_WELL:
+                label = void
+        phases.append(RarePhase(mean, se, chosen, label))
     return Sorted(tuple(phases), dark, bright, tuple(alone))
 
 
@@ -173,7 +186,7 @@ def _same(
     if len(matrices) == 1:
         distance[list(matrices)] = np.inf
     nearest = int(np.argmin(distance))
-    contrast = min(abs(mean - position[m]) for m in matrices)
-    if distance[nearest] < max(3.0 * se, 0.15 * contrast, 0.5):
+    contrast = float(np.mean([abs(mean - position[s.matrix]) for s in specks]))
+    if distance[nearest] < max(3.0 * se, CONTRAST_SHARE * contrast, 0.5):
         return nearest
     return None

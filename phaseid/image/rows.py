@@ -21,7 +21,9 @@ LINE_EXCESS = 1.6
 JUMP = 9.0
 LEAST_JUMP = 0.5
 LINE_REACH = 12.0
-BAND_REACH = 0.12
+# A band ends where the grey is back to within this share of the jump, or after this share of the rows.
+BACK = 0.15
+LONGEST_BAND = 0.2
 
 
 @dataclass(frozen=True, eq=False)
@@ -72,7 +74,7 @@ def row_offsets(canvas: Canvas) -> RowOffsets:
     noisy = scatter > LINE_EXCESS * error and line_sd > 0.03
     threshold = max(JUMP * max(scatter, error), LEAST_JUMP)
     jumps = np.abs(first) > threshold
-    bands = profile - _lowpass(profile, BAND_REACH * rows) if jumps.any() else None
+    bands = _bands(profile, np.flatnonzero(jumps)) if jumps.any() else None
     largest = float(np.abs(first[jumps]).max()) if jumps.any() else 0.0
     return RowOffsets(lines if noisy else None, bands, line_sd, largest)
 
@@ -114,6 +116,30 @@ def _integrated(differences: list[FloatArray], rows: int) -> FloatArray:
         right[:-lag] -= weight * difference
     profile = solveh_banded(band, right, lower=True)
     return np.asarray(profile - profile.mean())
+
+
+def _bands(profile: FloatArray, jumps: NDArray[np.intp]) -> FloatArray:
+    """What bands add to a straight line between the rows before and after them; 0 elsewhere."""
+    rows = len(profile)
+    bands = np.zeros(rows)
+    done = 0
+    for jump in jumps:
+        if jump < done:
+            continue
+        before = float(np.median(profile[max(0, jump - 5) : jump + 1]))
+        height = float(profile[jump + 1] - profile[jump])
+        last = min(rows - 1, int(jump + LONGEST_BAND * rows))
+        end = jump + 3
+        while end < last and abs(float(np.median(profile[end : end + 5])) - before) > BACK * abs(
+            height
+        ):
+            end += 1
+        after = float(np.median(profile[end : end + 5]))
+        span = np.arange(jump + 1, end)
+        line = before + (after - before) * (span - jump) / (end - jump)
+        bands[span] = profile[span] - line
+        done = end
+    return bands
 
 
 def _lowpass(profile: FloatArray, reach: float) -> FloatArray:

@@ -52,7 +52,7 @@ def runs_of(labels: NDArray[np.uint8], first_row: int = 0) -> tuple[Runs, IntArr
     begins : ndarray of int
         Where each run begins in the flattened strip.
     """
-    rows, columns = labels.shape
+    columns = labels.shape[1]
     flat = np.ascontiguousarray(labels).ravel()
     change = np.empty(flat.size, dtype=bool)
     change[0] = True

@@ -101,6 +101,7 @@ def _measured(
         ends,
         image.pixel_size_nm,
         found.blur_px,
+        found.muted,
     )
 
 

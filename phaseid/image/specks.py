@@ -30,6 +30,7 @@ LONGEST = 3.5
 LONG_PIXELS = 9.0
 MOST_PER_TILE = 400
 MOST_BORDER = 0.25
+FEWEST_LOCAL = 200
 
 
 @dataclass(frozen=True)
@@ -128,12 +129,14 @@ def find_specks(
     """
     from scipy import ndimage
 
-    matrix = position.astype(np.float32)[around]
-    excess = levels[STEP] - matrix
-    sd = np.float32(response.level[STEP])
-    strong = np.abs(excess) > SEED * sd
     low, high = extreme_labels(around, BORDER)
-    strong &= low == high
+    plain = low == high
+    centre, spread = _local(levels[STEP], around, plain, position, float(response.level[STEP]))
+    matrix = centre[around]
+    excess = levels[STEP] - matrix
+    sd = spread[around]
+    strong = np.abs(excess) > SEED * sd
+    strong &= plain
     if left_out is not None:
         strong &= ~left_out
     if not strong.any():
@@ -143,7 +146,7 @@ def find_specks(
         return []
     numbered, count = ndimage.label(weak, structure=np.ones((3, 3), bool))
     # What reaches into the blurred zone along a border is part of that border.
-    mixed = low != high
+    mixed = ~plain
     size = np.bincount(numbered.ravel(), minlength=count + 1)
     at_border = np.bincount(numbered[mixed], minlength=count + 1)
     hit = np.unique(numbered[strong])
@@ -159,6 +162,27 @@ def find_specks(
         if speck is not None and _inside(speck, shape):
             found.append(speck)
     return found
+
+
+def _local(
+    level: FloatImage,
+    around: NDArray[np.uint8],
+    plain: NDArray[np.bool_],
+    position: FloatArray,
+    noise_sd: float,
+) -> tuple[FloatImage, FloatImage]:
+    """Grey and scatter of each label in this tile: texture and drift raise the bar for specks."""
+    centre = position.astype(np.float32)
+    spread = np.full(len(position), noise_sd, dtype=np.float32)
+    thin = (slice(None, None, 3), slice(None, None, 3))
+    chosen = plain[thin]
+    labels, values = around[thin][chosen], level[thin][chosen]
+    for k in np.flatnonzero(np.bincount(labels, minlength=len(position)) >= FEWEST_LOCAL):
+        mine = values[labels == k]
+        middle = np.median(mine)
+        centre[k] = middle
+        spread[k] = max(noise_sd, 1.4826 * float(np.median(np.abs(mine - middle))))
+    return centre, spread
 
 
 def _describe(

@@ -44,7 +44,6 @@ class NoiseAxis:
         lowest = self.noise.floor
         if b <= 0:
             return np.asarray(t * np.sqrt(max(a, lowest)))
-        start = (lowest - a) / b
         above = np.maximum(t, 0.0)
         curve = ((0.5 * b * above + np.sqrt(lowest)) ** 2 - a) / b
         return np.asarray(curve + np.minimum(t, 0.0) * np.sqrt(lowest))

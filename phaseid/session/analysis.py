@@ -94,7 +94,7 @@ def analyse(
     return Analysis(
         tuple(p.index for p in pictures),
         conditions,
-        state.contexts,
+        knowledge.check_contexts(state.contexts),
         clusters,
         _scale(ranking, marked),
         advice,

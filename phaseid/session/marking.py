@@ -156,8 +156,8 @@ class _Gatherer:
             handler(mark)
 
     def _known(self, mark: Mark) -> None:
-        place = nearest(self.places, mark)
         phase, names = self.candidates.index(mark.value), self.candidates.set.names
+        place = nearest(self.places, mark)
         k, known = place.observation, self.marked.known
         if k in known:
             if known[k] == phase:
