@@ -121,6 +121,12 @@ def measure(
     return _by_label(runs, total, table, by_run, noise, packed, data.shape)
 
 
+def _muted_rows(muted: NDArray[np.bool_], offset: int, first: int, last: int) -> NDArray[np.bool_]:
+    at = np.arange(first, last) - offset
+    inside = (at >= 0) & (at < len(muted))
+    return np.where(inside, muted[np.clip(at, 0, len(muted) - 1)], False)
+
+
 def _edges(labels: NDArray[np.uint8], first: int, last: int, reach: int) -> NDArray[np.bool_]:
     top, bottom = max(0, first - reach), min(labels.shape[0], last + reach)
     low, high = extreme_labels(labels[top:bottom], reach)

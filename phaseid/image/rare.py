@@ -18,7 +18,8 @@ FEWEST = 3
 FEWEST_PIXELS = 20
 ALONE_PIXELS = 100
 # Where there are pores, small dark spots are pores too, unless many of them agree well.
-MANY = 6
+MANY = 12
+NEAR_VOID = 0.45
 AGREE_WELL = 1.5
 # Greys of small specks are uncertain by this share of their contrast whatever the statistics say.
 CONTRAST_SHARE = 0.15
@@ -114,7 +115,9 @@ def sort_specks(
         label = _same(mean, se, chosen, position)
         if label is None and void is not None and mean < min(position[s.matrix] for s in chosen):
             misfit = float(np.mean(((own[members] - mean) / error[members]) ** 2))
-            if len(chosen) < MANY or misfit > AGREE_WELL:
+            matrix = float(np.mean([position[s.matrix] for s in chosen]))
+            near = mean - position[void] < NEAR_VOID * (matrix - position[void])
+            if near or len(chosen) < MANY or misfit > AGREE_WELL:
                 label = void
         phases.append(RarePhase(mean, se, chosen, label))
     return Sorted(tuple(phases), dark, bright, tuple(alone))
