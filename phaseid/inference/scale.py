@@ -20,6 +20,7 @@ from numpy.typing import NDArray
 
 from phaseid.inference.axis import SignalAxis
 from phaseid.inference.departure import Departure
+from phaseid.inference.drawing import lattice, normal_cdf, normal_quantile
 from phaseid.inference.observations import Anchor, Observation
 from phaseid.inference.proposal import PairProposal, adapt
 
@@ -220,8 +221,8 @@ class _Sampler:
 
     def batch(self, count: int, generator: np.random.Generator) -> _Batch:
         problem, departure = self.problem, self.problem.departure
-        uniforms = _lattice(count, 2 + departure.terms, generator)
-        curves = departure.curves(_normal_quantile(uniforms[:, 2:]))
+        uniforms = lattice(count, 2 + departure.terms, generator)
+        curves = departure.curves(normal_quantile(uniforms[:, 2:]))
         drifts = self._drifts(count, generator)
         pair, log_weight = self._pair_signals(uniforms[:, :2], generator)
         offset, gain, line_weight = self._lines(pair, uniforms, curves, drifts, generator)
@@ -395,7 +396,7 @@ class _Sampler:
             if anchor.clipped is not None:
                 sign = 1.0 if anchor.clipped == "low" else -1.0
                 spread = np.sqrt(anchor.grey_se**2 + (gains * own_sd) ** 2) + 1e-9
-                total += share * _normal_cdf(sign * (anchor.grey - predicted) / spread)
+                total += share * normal_cdf(sign * (anchor.grey - predicted) / spread)
                 continue
             variance = anchor.grey_se**2 + (gains * own_sd) ** 2 + 1e-12
             total += (
@@ -421,33 +422,3 @@ def _anchor_density(axis: SignalAxis, anchor: Anchor) -> Floats | None:
         return None
     density: Floats = anchor.share @ axis.kernels(anchor.signal, anchor.own_sd).astype(float)
     return density
-
-
-def _lattice(count: int, dimensions: int, generator: np.random.Generator) -> Floats:
-    """Evenly spread points in the unit cube: an additive recurrence, shifted at random.
-
-    The irrational steps are powers of the generalised golden ratio (Roberts 2018, common practice in
-    quasi-Monte Carlo); they cover the cube far more evenly than independent draws.
-    """
-    ratio = 1.5
-    for _ in range(40):
-        ratio = (1.0 + ratio) ** (1.0 / (dimensions + 1))
-    steps = ratio ** -np.arange(1, dimensions + 1)
-    shift = generator.random(dimensions)
-    points = np.mod(shift + np.outer(np.arange(1, count + 1), steps), 1.0)
-    inner: Floats = np.clip(points, 1e-9, 1 - 1e-9)
-    return inner
-
-
-def _normal_quantile(uniform: Floats) -> Floats:
-    from scipy.special import ndtri
-
-    quantile: Floats = ndtri(uniform)
-    return quantile
-
-
-def _normal_cdf(value: Floats) -> Floats:
-    from scipy.special import ndtr
-
-    probability: Floats = ndtr(value)
-    return probability
