@@ -74,7 +74,7 @@ class Particles:
         order = np.argsort(values, kind="stable")
         share = np.cumsum(self.weight[order])
         low, middle, high = (
-            float(values[order[min(np.searchsorted(share, q), len(order) - 1)]])
+            float(values[order[min(int(np.searchsorted(share, q)), len(order) - 1)]])
             for q in (0.16, 0.5, 0.84)
         )
         return middle, (high - low) / 2

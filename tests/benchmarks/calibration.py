@@ -7,6 +7,7 @@ score and the recall beside what an oracle gets that knows offset, gain and depa
 
 from __future__ import annotations
 
+import itertools
 import sys
 from collections.abc import Callable, Sequence
 
@@ -39,7 +40,7 @@ def reliability(outcomes: Sequence[Outcome]) -> list[tuple[float, float, int]]:
     given = np.concatenate([o.probability for o in outcomes])
     right = np.concatenate([np.arange(len(o.probability)) == o.truth for o in outcomes])
     rows = []
-    for low, high in zip(EDGES[:-1], EDGES[1:], strict=True):
+    for low, high in itertools.pairwise(EDGES):
         inside = (given >= low) & (given < high)
         if inside.any():
             rows.append(
