@@ -13,6 +13,7 @@ from phaseid.image.canvas import Canvas, Tile
 from phaseid.image.clusters import Cluster
 from phaseid.image.counting import grey_step
 from phaseid.image.deciding import finding_of
+from phaseid.image.fitness import assess
 from phaseid.image.flatness import STEPS, FlatCounts, count_flat
 from phaseid.image.greyimage import GreyImage
 from phaseid.image.infobar import used_rows
@@ -42,7 +43,7 @@ MOST_THIN = 0.15
 LEAST_LINES = 2e-4
 # Pores are darker than the commonest phase by this share of all greys, and this many noises.
 VOID_SHARE = 0.35
-VOID_STEP = 8.0
+VOID_STEP = 3.0
 # Rows corrected by more than this many noise standard deviations are not trusted.
 MUTED = 0.25
 
@@ -112,7 +113,7 @@ def find_clusters(
         raise InputError("Nothing of the image is left; exclude less.")
     progress(0.0, "noise")
     noise = estimate_noise(data)
-    warnings: list[Finding] = []
+    warnings = assess(image, noise)
     answer = response(noise.row, noise.column, STEPS)
     axis = NoiseAxis(noise)
     canvas = Canvas(data, axis, Shading(data.shape), left_out)
@@ -293,9 +294,15 @@ def _grouped(group: NDArray[np.intp]) -> NDArray[np.uint8]:
 def _stamp(
     part: NDArray[np.uint8], rare: Sorted, group: NDArray[np.intp], axis: NoiseAxis
 ) -> dict[int, tuple[float, float]]:
-    """Write the specks into the label map."""
+    """Write the specks into the label map, and take cracks and scratches out of it."""
     found: dict[int, tuple[float, float]] = {}
     label = len(group)
+    for s in rare.lines:
+        rows = slice(max(s.row, 0), s.row + s.mask.shape[0])
+        columns = slice(max(s.column, 0), s.column + s.mask.shape[1])
+        box = part[rows, columns]
+        cut = s.mask[max(-s.row, 0) :, max(-s.column, 0) :][: box.shape[0], : box.shape[1]]
+        box[cut] = 0
     for phase in rare.phases:
         if phase.label is not None:
             value = int(group[phase.label]) + 1

@@ -20,6 +20,8 @@ from phaseid.image.tiling import joins_of
 CLIPPED = 0.01
 CLIPPED_BADLY = 0.05
 FEW_LEVELS = 48
+FEWEST_LEVELS = 12
+DITHER = 0.5
 NARROW_SHARE = 0.15
 COMB_SHARE = 0.15
 # Mean squared difference across the borders of 8 x 8 blocks over that inside of them.
@@ -134,7 +136,8 @@ def _levels(
         )
     elif len(inside) > 16:
         found += _spikes(values[bulk], inside)
-    if used < FEW_LEVELS and width < FEW_LEVELS:
+    # Noise of a level or more carries the greys between the levels through any average.
+    if used < FEWEST_LEVELS or (used < FEW_LEVELS and typical < DITHER):
         found.append(
             Finding(
                 "few-grey-levels",
@@ -235,7 +238,8 @@ def _signal_to_noise(
 ) -> list[Finding]:
     values, counts = histogram
     median = float(values[np.searchsorted(np.cumsum(counts), counts.sum() / 2)])
-    span = max(median - float(values[0]), 1e-9)
+    # Black is taken as no signal; with a raised black level the contrast is less still.
+    span = max(median, 1e-9)
     sd = float(noise.sd(median))
     # What a grain of 100 pixels tells.
     error = sd * float(np.sqrt(noise.correlated_pixels / 100))

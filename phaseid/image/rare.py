@@ -17,10 +17,14 @@ FloatArray = NDArray[np.float64]
 FEWEST = 3
 FEWEST_PIXELS = 20
 ALONE_PIXELS = 100
-# Where there are pores, small dark spots are pores too, unless many of them agree well.
-MANY = 12
+# In surroundings that scatter by this many times the noise, spots are common without being a phase.
+TEXTURED = 2.0
+FEWEST_TEXTURED = 30
+# Where there are pores, small dark spots of a grey nearer to theirs than this are pores too; other dark
+# spots may be pores cut shallow, and are only reported.
 NEAR_VOID = 0.45
-AGREE_WELL = 1.5
+# More kinds of specks than this, and they are not phases but structure of another sort.
+MOST_KINDS = 4
 # Greys of small specks are uncertain by this share of their contrast whatever the statistics say.
 CONTRAST_SHARE = 0.15
 # Specks agree if their greys differ by less than this many standard errors.
@@ -62,6 +66,7 @@ class Sorted:
     dark_line_pixels: int
     bright_line_pixels: int
     alone: tuple[Speck, ...]
+    lines: tuple[Speck, ...] = ()
 
 
 def sort_specks(
@@ -95,32 +100,40 @@ def sort_specks(
     lines = [s for s in specks if s.long]
     dark = sum(s.pixels for s in lines if s.height < 0 and s.length > LINE_LENGTH)
     bright = sum(s.pixels for s in lines if s.height > 0 and s.length > LINE_LENGTH)
-    round_ones = [s for s in specks if not s.long]
+    drawn = tuple(s for s in lines if s.length > LINE_LENGTH)
+    # What lies in a pore is its floor or dust.
+    round_ones = [s for s in specks if not s.long and s.matrix != void]
     for sign, line in ((-1.0, dark), (1.0, bright)):
         same = [s for s in round_ones if s.height * sign > 0]
         if line > LINES_OVER_SPECKS * sum(s.pixels for s in same):
             round_ones = [s for s in round_ones if s.height * sign <= 0]
     if not round_ones:
-        return Sorted((), dark, bright, ())
+        return Sorted((), dark, bright, (), drawn)
     own, error = _greys(round_ones, position, blur_px, height_se, span)
     phases, alone = [], []
     for members in _groups(own, error, np.array([s.pixels for s in round_ones], float)):
         chosen = tuple(round_ones[i] for i in members)
         pixels = sum(s.pixels for s in chosen)
-        enough = len(chosen) >= FEWEST and pixels >= FEWEST_PIXELS
-        if not enough and pixels < ALONE_PIXELS:
+        textured = float(np.median([s.texture for s in chosen])) > TEXTURED
+        fewest = FEWEST_TEXTURED if textured else FEWEST
+        enough = len(chosen) >= fewest and pixels >= FEWEST_PIXELS
+        if not enough and (textured or pixels < ALONE_PIXELS):
             alone.extend(chosen)
             continue
         mean, se = _common(chosen, position, blur_px, height_se, span)
         label = _same(mean, se, chosen, position)
-        if label is None and void is not None and mean < min(position[s.matrix] for s in chosen):
-            misfit = float(np.mean(((own[members] - mean) / error[members]) ** 2))
+        dark = sum(s.pixels for s in chosen if s.height < 0) > pixels / 2
+        if label is None and void is not None and dark:
             matrix = float(np.mean([position[s.matrix] for s in chosen]))
-            near = mean - position[void] < NEAR_VOID * (matrix - position[void])
-            if near or len(chosen) < MANY or misfit > AGREE_WELL:
-                label = void
+            if mean - position[void] >= NEAR_VOID * (matrix - position[void]):
+                alone.extend(chosen)
+                continue
+            label = void
         phases.append(RarePhase(mean, se, chosen, label))
-    return Sorted(tuple(phases), dark, bright, tuple(alone))
+    if sum(p.label is None for p in phases) > MOST_KINDS:
+        alone.extend(s for p in phases if p.label is None for s in p.specks)
+        phases = [p for p in phases if p.label is not None]
+    return Sorted(tuple(phases), dark, bright, tuple(alone), drawn)
 
 
 def _greys(

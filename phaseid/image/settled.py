@@ -11,11 +11,16 @@ from numpy.typing import NDArray
 from phaseid.errors import InputError
 from phaseid.image.clusters import Cluster, Components
 from phaseid.image.counting import grey_counts, range_ends
-from phaseid.image.deciding import channelled, finding_of, void_labels
+from phaseid.image.deciding import channelled, finding_of, populations, void_labels
 from phaseid.image.finding_clusters import Found
 from phaseid.image.greyimage import GreyImage
 from phaseid.image.measuring import Measured, measure
 from phaseid.image.notices import Finding
+
+# Scatter of a cluster's regions, in noise standard deviations, that is worth saying.
+SCATTERED = 0.4
+# Orientation contrast is some per cent of the signal; more than this is a change of composition.
+ORIENTATION_SHARE = 0.06
 
 
 @dataclass(frozen=True, eq=False)
@@ -75,6 +80,8 @@ def settle(image: GreyImage, found: Found) -> Settled:
     clusters = tuple(
         _cluster(measured, k, int(number[k]), used, found, specks, k in dark) for k in present
     )
+    if found.automatic:
+        warnings += _scattered(measured, found, clusters, present, warnings)
     voids = sum(c.area_fraction for c in clusters if c.kind == "void")
     if voids and found.automatic:
         warnings.append(finding_of("pores", voids))
@@ -84,6 +91,34 @@ def settle(image: GreyImage, found: Found) -> Settled:
         np.array([c.component_sd for c in clusters]),
     )
     return Settled(clusters, labels, measured.edge, histogram, mixture, tuple(warnings), regions)
+
+
+def _scattered(
+    measured: Measured,
+    found: Found,
+    clusters: tuple[Cluster, ...],
+    present: list[int],
+    before: list[Finding],
+) -> list[Finding]:
+    """Say of phases that their regions differ more than noise explains."""
+    spread = populations(measured, found.noise, present)
+    said = {w.code for w in before}
+    new: list[Finding] = []
+    for k, cluster in zip(present, clusters, strict=True):
+        scatter = spread[k].scatter
+        noise_sd = float(found.noise.sd(cluster.grey_mean))
+        if cluster.kind == "void" or k in found.specks or cluster.clipped:
+            continue
+        # Compression and imperfectly flattened shading widen a cluster too.
+        least = SCATTERED * (1.0 if not said & {"lossy-blocks", "shading"} else 2.0)
+        if scatter < least * noise_sd or scatter < 2.0 * cluster.grey_se:
+            continue
+        orientation = scatter < ORIENTATION_SHARE * max(abs(cluster.grey_mean), 1e-9)
+        code = "channelling" if orientation else "zoned"
+        if code not in said:
+            said.add(code)
+            new.append(finding_of(code, scatter if orientation else cluster.grey_mean))
+    return new
 
 
 def _measured(

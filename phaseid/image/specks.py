@@ -29,8 +29,9 @@ BORDER = 4
 LONGEST = 3.5
 LONG_PIXELS = 9.0
 MOST_PER_TILE = 400
-MOST_BORDER = 0.25
+MOST_BORDER = 0.05
 FEWEST_LOCAL = 200
+MOST_WEAK = 0.25
 
 
 @dataclass(frozen=True)
@@ -55,6 +56,8 @@ class Speck:
         Crack or scratch rather than a grain.
     length : float
         In pixels, along its long axis.
+    texture : float
+        Scatter of the surrounding label in this tile, over what noise explains.
     """
 
     row: int
@@ -66,6 +69,7 @@ class Speck:
     reach: int
     long: bool
     length: float
+    texture: float
 
     @property
     def pixels(self) -> int:
@@ -141,8 +145,9 @@ def find_specks(
         strong &= ~left_out
     if not strong.any():
         return []
-    weak = np.abs(excess) > REACH * sd
-    if weak.mean() > 0.2:
+    # Right at a border everything stands out; only what lies clear of it can be a speck.
+    weak = (np.abs(excess) > REACH * sd) & np.equal(*extreme_labels(around, BORDER - 1))
+    if weak.mean() > MOST_WEAK:
         return []
     numbered, count = ndimage.label(weak, structure=np.ones((3, 3), bool))
     # What reaches into the blurred zone along a border is part of that border.
@@ -153,11 +158,12 @@ def find_specks(
     hit = hit[at_border[hit] <= MOST_BORDER * size[hit]]
     hit = hit[hit > 0][:MOST_PER_TILE]
     boxes = ndimage.find_objects(numbered)
-    found = []
+    found: list[Speck] = []
+    texture = spread / response.level[STEP]
     fine = levels[0] - matrix
     for number in hit:
         speck = _describe(
-            numbered, int(number), boxes[number - 1], excess, fine, around, inner, origin
+            numbered, int(number), boxes[number - 1], excess, fine, around, inner, origin, texture
         )
         if speck is not None and _inside(speck, shape):
             found.append(speck)
@@ -194,6 +200,7 @@ def _describe(
     around: NDArray[np.uint8],
     inner: tuple[slice, slice],
     origin: tuple[int, int],
+    texture: FloatImage,
 ) -> Speck | None:
     inside = numbered[box] == number
     pixels = int(inside.sum())
@@ -224,6 +231,7 @@ def _describe(
         int(near.sum()),
         long,
         4.0 * _axes(inside)[0],
+        float(texture[matrix]),
     )
 
 
