@@ -23,7 +23,7 @@ Floats = NDArray[np.float64]
 # Compositions a variable phase is represented by.
 VARIANTS = 9
 # Raised when the formula code changes what comes out of it.
-_VERSION = 1
+_VERSION = 2
 
 
 @dataclass(frozen=True)

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import difflib
+import re
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, field
 
@@ -21,6 +22,8 @@ EVERYWHERE_WEIGHT = 0.01
 # A phase that is listed only for a special case of the context: most samples are another case.
 BELOW = 0.3
 
+_PATH = re.compile(r"[a-z0-9]+(-[a-z0-9]+)*(/[a-z0-9]+(-[a-z0-9]+)*)*")
+
 
 @dataclass(frozen=True)
 class Context:
@@ -35,12 +38,28 @@ class Context:
         One sentence an expert would accept.
     weights : mapping of str to float
         Weights of phases by name that stand above what the databases say.
+
+    Raises
+    ------
+    ValueError
+        For a path that nobody could ask for, or a weight that is no finite number of zero or more.
     """
 
     path: str
     title: str
     description: str = ""
     weights: Mapping[str, float] = field(default_factory=dict)
+
+    def __post_init__(self) -> None:
+        if not _PATH.fullmatch(self.path):
+            raise ValueError(
+                f"the context path {self.path!r} must be of lower-case words joined by '-', parts by '/'"
+            )
+        for name, weight in self.weights.items():
+            if not 0 <= weight < float("inf"):
+                raise ValueError(
+                    f"the weight {weight} of {name!r} in {self.path} must be finite and zero or more"
+                )
 
 
 @dataclass(frozen=True)
@@ -55,12 +74,35 @@ class Coexistence:
         On the probability of seeing both in one image: 0.05 for "almost never".
     reason : str
         Why, with its source.
+    where : tuple of str
+        Contexts, with all below them, in which phases have had the time and heat to react. A rule holds
+        where every chosen context lies in these; soil, dust and unfired mixtures hold anything beside
+        anything. Empty for everywhere.
+
+    Raises
+    ------
+    ValueError
+        For a name that is not in a tuple, or a factor that is not between 0 and 1.
     """
 
     first: tuple[str, ...]
     second: tuple[str, ...]
     factor: float
     reason: str
+    where: tuple[str, ...] = ()
+
+    def __post_init__(self) -> None:
+        for given in (self.first, self.second, self.where):
+            if isinstance(given, str):
+                raise ValueError(f"the name {given!r} must stand in a tuple: ({given!r},)")
+        if not 0 <= self.factor <= 1:
+            raise ValueError(f"the factor {self.factor} of a coexistence rule must be from 0 to 1")
+
+    def holds(self, contexts: Sequence[str]) -> bool:
+        """Whether the rule holds for a sample of the given contexts (full paths)."""
+        if not self.where:
+            return True
+        return bool(contexts) and all(set(self.where) & set(_line(c)) for c in contexts)
 
 
 class ContextTree:

@@ -7,9 +7,11 @@ People write formulas in many ways. What is read:
   ``(Mg0.9,Fe0.1)2SiO4`` and ``(Mg0.9Fe0.1)2SiO4`` state it
 * named variables in braces with arithmetic: ``(Mg{x}Fe{1-x})2SiO4``, ``Fe{1-x}S``; without braces where
   the letter is one of n m u v w x y z: ``Fe1-xS``
-* ranges as subscripts: ``Mg4.5-2.5``; site totals: ``(Sb7As2)Σ=9``
+* ranges as subscripts: ``Mg4.5-2.5``; several whose beginnings and ends have one sum are an exchange; site totals: ``(Sb7As2)Σ=9``
 * hydrates and oxide sums with any of the usual dots: ``CaSO4·2H2O``, ``3Al2O3·2SiO2``
-* mixtures: ``wt% Fe74 Cr18 Ni8``, ``wt% SiO2 68-75 Na2O 12-16``, ``at% Ni{100-x} Al{x}``, ``wt% Cr18 Fe bal``
+* the spellings of `phaseid.phases.spelling`: HTML, LaTeX, carets, fractions, decimal commas
+* mixtures: ``wt% Fe74 Cr18 Ni8``, ``wt% SiO2 68-75 Na2O 12-16``, ``at% Ni{100-x} Al{x}``, ``wt% Cr18 Fe bal``,
+  and the trade's ``Ti-6Al-4V``, whose first is the balance by weight
 
 A charge and a subscript can look alike. A digit followed by a sign is a charge when something follows that
 cannot continue an amount, or when digits follow: ``Sn2+21`` is Sn(2+) times 21, ``Mn3+6`` is Mn(3+) times
@@ -20,7 +22,6 @@ elsewhere: ``N3-24`` beside ``Hg2+55`` is N(3-) times 24.
 
 from __future__ import annotations
 
-import re
 from collections.abc import Mapping
 from dataclasses import dataclass
 
@@ -32,13 +33,12 @@ from phaseid.phases.amounts import FormulaError
 from phaseid.phases.mixture import is_mixture, read_mixture
 from phaseid.phases.reader import Reading, read_formula
 from phaseid.phases.spread import corners, points
+from phaseid.phases.variables import usual_range, without_conditions
 
 __all__ = ["Formula", "FormulaError", "parse"]
 
 Floats = NDArray[np.float64]
 
-# Default range of a variable that is used without one.
-DEFAULT_RANGE = (0.0, 1.0)
 # Letters that count something without a natural upper limit.
 _COUNTS = ("n", "m")
 MOST_CHARACTERS = 400
@@ -115,7 +115,8 @@ def parse(text: str, ranges: Mapping[str, tuple[float, float]] | None = None) ->
     ----------
     text : str
     ranges : mapping of str to (float, float), optional
-        Ranges of the variables; 0 to 1 for a variable without one.
+        Ranges of the variables. A variable without one takes the range that is written behind the
+        formula, such as ``(x = 0-0.17)`` or ``(0 < x < 0.4)``, or else `usual_range`.
 
     Returns
     -------
@@ -134,7 +135,7 @@ def parse(text: str, ranges: Mapping[str, tuple[float, float]] | None = None) ->
         raise FormulaError(
             f"The formula {shown!r} has {len(text)} characters; {MOST_CHARACTERS} are the most."
         )
-    body, stated = _without_ranges(text)
+    body, stated = without_conditions(text)
     try:
         reading = read_mixture(body) if is_mixture(body) else read_formula(body)
     except RecursionError:
@@ -146,9 +147,10 @@ def parse(text: str, ranges: Mapping[str, tuple[float, float]] | None = None) ->
         found = ranges.get(name) or stated.get(name)
         if found is None and name in _COUNTS:
             raise FormulaError(
-                f"{shown!r}: {name} stands for any number; give its range, for example {name}: [1, 3]."
+                f"{shown!r}: {name} stands for any number; write its range behind the formula, for "
+                f"example ({name} = 1-3), or in a database as ranges: {{{name}: [1, 3]}}."
             )
-        low, high = found or DEFAULT_RANGE
+        low, high = found or usual_range(name, reading.counts)
         if not low <= high or not np.isfinite([low, high]).all():
             raise FormulaError(
                 f"{shown!r}: the range of {name} runs from {low} to {high}; give the lower end first."
@@ -169,20 +171,3 @@ def parse(text: str, ranges: Mapping[str, tuple[float, float]] | None = None) ->
     except InputError as error:
         raise FormulaError(str(error)) from None
     return made
-
-
-_STATED = re.compile(r"[;,]?\s*\(?\s*([a-z])\s*(?:=|≈|~)\s*([\d.]+)\s*[-–to]+\s*([\d.]+)\s*\)?\s*$")
-_BETWEEN = re.compile(r"\(\s*([\d.]+)\s*[<≤]=?\s*([a-z])\s*[<≤]=?\s*([\d.]+)\s*\)\s*$")
-
-
-def _without_ranges(text: str) -> tuple[str, dict[str, tuple[float, float]]]:
-    """Take a range such as ``(x = 0-0.17)`` or ``(0 < x < 0.4)`` off the end of a formula."""
-    found = _STATED.search(text)
-    if found:
-        name, low, high = found.groups()
-        return text[: found.start()].strip(), {name: (float(low), float(high))}
-    found = _BETWEEN.search(text)
-    if found:
-        low, name, high = found.groups()
-        return text[: found.start()].strip(), {name: (float(low), float(high))}
-    return text.strip(), {}

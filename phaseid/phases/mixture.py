@@ -5,23 +5,31 @@ from __future__ import annotations
 import re
 
 from phaseid.phases.amounts import Amount, FormulaError, Values, arithmetic, fixed, variable
-from phaseid.phases.reader import Amounts, Reading, read_formula
+from phaseid.phases.reader import Reading, read_formula
+from phaseid.phases.sums import Amounts
 from phaseid.physics.elements import SYMBOLS, atomic_masses
 
-_START = re.compile(r"^\s*(wt|at|mass|mol)\.?\s*%\s*", re.IGNORECASE)
-_AMOUNT = r"(?:\{[^}]*\}|\d+(?:\.\d+)?(?:\s*[-–]\s*\d+(?:\.\d+)?)?|bal\.?|balance)"
+_UNIT = re.compile(r"(wt|at|mass|mol|weight|atomic)\.?[\s-]*(?:%|pct|per\s?cent)", re.IGNORECASE)
+_NUMBER = r"\d+(?:\.\d+)?"
+_AMOUNT = rf"(?:\{{[^}}]*\}}|{_NUMBER}(?:\s*[-–]\s*{_NUMBER})?|bal\.?|balance)"
 _END = r"(?=[\s,;]|$)"
 # A compound is set off from its amount by a space, or the digits could not be told apart; a symbol need
 # not be.
 _ENTRY = re.compile(
     rf"([A-Z][A-Za-z0-9()\[\].·]*)\s+({_AMOUNT}){_END}|([A-Z][a-z]?)({_AMOUNT}){_END}"
+    rf"|(?P<amount>{_NUMBER})\s*(?P<name>[A-Z][a-z]?){_END}"
 )
+# Fe74Cr18Ni8 in one word, taken as shares only where they make up about a hundred.
+_RUN = re.compile(rf"(?:[A-Z][a-z]?{_NUMBER})+{_END}")
+_PAIR = re.compile(rf"([A-Z][a-z]?)({_NUMBER})")
+# The trade's Ti-6Al-4V: the first is the balance, by weight unless said otherwise.
+_ALLOY = re.compile(rf"\s*([A-Z][a-z]?)((?:\s?[-–]\s?{_NUMBER}\s?[A-Z][a-z]?)+)\s*")
 _BALANCE = ("bal", "bal.", "balance")
 
 
 def is_mixture(text: str) -> bool:
     """Whether a text is written as a mixture."""
-    return bool(_START.match(text))
+    return bool(_UNIT.search(text) or _ALLOY.fullmatch(text))
 
 
 def read_mixture(text: str) -> Reading:
@@ -31,27 +39,58 @@ def read_mixture(text: str) -> Reading:
     ------
     FormulaError
     """
-    start = _START.match(text)
-    assert start is not None
-    by_mass = start[1].lower() in ("wt", "mass")
+    found = [u[1].lower() for u in _UNIT.finditer(text)]
+    kinds = {"w": "wt", "mass": "wt"}
+    units = {kinds.get(u, kinds.get(u[0], "at")) for u in found}
+    by_mass = units != {"at"}
+    if len(units) > 1:
+        raise FormulaError(f"{text!r} mixes two kinds of percent; write all amounts in one.")
     reader = _Mixture(text)
-    at = start.end()
-    body = text.rstrip()
+    body = _plain(text)
+    alloy = _ALLOY.fullmatch(body)
+    if alloy:
+        reader.add(alloy[1], "bal", alloy.start(1))
+        for part in re.finditer(rf"({_NUMBER})\s?([A-Z][a-z]?)", alloy[2]):
+            reader.add(part[2], part[1], alloy.start(2) + part.start())
+        return reader.finish(by_mass)
+    at = 0
     while at < len(body):
         gap = re.match(r"[\s,;]+", body[at:])
         if gap:
             at += gap.end()
             continue
-        entry = _ENTRY.match(body, at)
-        if entry is None:
-            word = body[at:].split()[0]
-            raise FormulaError(
-                f"{text!r}, character {at + 1}: {word!r} is not a symbol or compound with an amount; "
-                "write for example wt% Fe74 Cr18 Ni8 or wt% SiO2 72 Na2O 14."
-            )
-        reader.add(entry[1] or entry[3], entry[2] or entry[4], entry.start())
-        at = entry.end()
+        at = _entry(reader, body, at)
     return reader.finish(by_mass)
+
+
+def _plain(text: str) -> str:
+    """The amounts alone, each in its place: units, signs and an outer bracket become spaces."""
+    body = _UNIT.sub(lambda m: " " * len(m[0]), text)
+    body = re.sub(r"[%=:]", " ", body)
+    body = re.sub(r"(?<=\d),(?=\d)", ".", body).rstrip()
+    if body.lstrip().startswith("(") and body.endswith(")") and body.count("(") == 1:
+        body = body[:-1].replace("(", " ")
+    return body.rstrip()
+
+
+def _entry(reader: _Mixture, body: str, at: int) -> int:
+    """Read the entry that begins at a character; return where it ends."""
+    entry = _ENTRY.match(body, at)
+    if entry is not None:
+        name = entry[1] or entry[3] or entry["name"]
+        reader.add(name, entry[2] or entry[4] or entry["amount"], entry.start())
+        return entry.end()
+    run = _RUN.match(body, at)
+    pairs = list(_PAIR.finditer(run[0])) if run else []
+    if run and 95 <= sum(float(p[2]) for p in pairs) <= 105:
+        for pair in pairs:
+            reader.add(pair[1], pair[2], at + pair.start())
+        return run.end()
+    word = body[at:].split()[0]
+    raise FormulaError(
+        f"{reader.text!r}, character {at + 1}: {word!r} is not a symbol or compound with an amount; "
+        "write for example wt% Fe74 Cr18 Ni8 or wt% SiO2 72 Na2O 14."
+    )
 
 
 class _Mixture:
@@ -61,6 +100,7 @@ class _Mixture:
         self.elements: set[str] = set()
         self.variables: set[str] = set()
         self.ranges: dict[str, tuple[float, float]] = {}
+        self.counts: list[Amount] = []
 
     def add(self, name: str, amount: str, at: int) -> None:
         where = f"{self.text!r}, character {at + 1}"
@@ -84,6 +124,7 @@ class _Mixture:
         if text.startswith("{"):
             amount = arithmetic(text[1:-1], where)
             self.variables |= amount.variables
+            self.counts.append(amount)
             return amount
         ends = [float(part) for part in re.split(r"\s*[-–]\s*", text)]
         if len(ends) == 1:
@@ -103,6 +144,7 @@ class _Mixture:
             self.variables - set(self.ranges),
             self.ranges,
             by_mass=by_mass,
+            counts=tuple(self.counts),
         )
 
     def _amounts(self, by_mass: bool) -> Amounts:

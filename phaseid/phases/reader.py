@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import re
-from collections.abc import Callable
 from dataclasses import dataclass, field
 
 from phaseid.phases.amounts import (
@@ -15,22 +14,28 @@ from phaseid.phases.amounts import (
     fixed,
     variable,
 )
+from phaseid.phases.spelling import DOTS, VACANCIES, respelled
+from phaseid.phases.sums import Amounts, coupled, nothing, scaled_to, summed, times
 from phaseid.physics.elements import SYMBOLS
 
-# Amount of each element for given values of the variables and splits.
-Amounts = Callable[[Values], dict[str, float]]
-
 _KNOWN = frozenset(SYMBOLS)
-_HYDROGEN = ("D", "T")
-_VACANCIES = "□◻☐▢"
-_DOTS = "·•∙⋅*・‧"
-_PLAIN: dict[int, int | str | None] = {}
-_PLAIN.update(str.maketrans("₀₁₂₃₄₅₆₇₈₉₊₋．", "0123456789+-.", "⁰¹²³⁴⁵⁶⁷⁸⁹⁺⁻"))
-_PLAIN.update({ord(c): "-" for c in "–—−‐‑"})
-_PLAIN.update({ord("ₓ"): "x", ord("ᵧ"): "y", ord("ₙ"): "n", ord("∑"): "Σ"})
+_HYDROGEN = ("D",)
 _NUMBER = r"(?:\d+(?:\.\d+)?|\.\d+)"
 _LETTER = f"[{VARIABLE_LETTERS}]"
-_GENERIC = {"REE": "Ce0.5La0.25Nd0.25", "Ln": "La, Ce or Nd", "RE": "Ce0.5La0.25Nd0.25"}
+_TERM = f"(?:{_NUMBER}?{_LETTER}|{_NUMBER})"
+_GENERIC = {
+    "HREE": "(Y,Dy,Yb)",
+    "LREE": "(La,Ce,Nd)",
+    "REE": "(Ce0.5La0.25Nd0.25)",
+    "RE": "(Ce0.5La0.25Nd0.25)",
+    "Ln": "(La,Ce,Nd)",
+    "Me": "(Fe,Mn)",
+    "TM": "(Fe,Ni)",
+    "M": "(Fe,Mg)",
+    "R": "(Ce,Y)",
+    "A": "(Na,K)",
+    "X": "(F,Cl)",
+}
 _ANIONS = frozenset({"N", "P", "As", "Sb", "O", "S", "Se", "Te", "F", "Cl", "Br", "I", "C"})
 _DEEPEST = 40
 
@@ -53,6 +58,8 @@ class Reading:
         are the values ``s.0``, ``s.1`` and so on.
     by_mass : bool
         Whether `amounts` are mass shares instead of atoms.
+    counts : tuple of Amount
+        Amounts that hold variables; none of them can be negative.
     """
 
     amounts: Amounts
@@ -61,6 +68,7 @@ class Reading:
     ranges: dict[str, tuple[float, float]] = field(default_factory=dict)
     splits: dict[str, int] = field(default_factory=dict)
     by_mass: bool = False
+    counts: tuple[Amount, ...] = ()
 
 
 def read_formula(text: str) -> Reading:
@@ -84,34 +92,43 @@ class _Part:
 class _Reader:
     def __init__(self, text: str) -> None:
         self.original = text
-        self.text = _dotted(text.translate(_PLAIN).replace(" ", ""))
+        spelled = respelled(text)
+        self.text, self.positions = spelled.text, spelled.positions
         self.at = self.depth = 0
         self.elements: set[str] = set()
         self.variables: set[str] = set()
         self.ranges: dict[str, tuple[float, float]] = {}
         self.splits: dict[str, int] = {}
+        self.counts: list[Amount] = []
+        self.written: dict[str, tuple[float, float]] = {}
         self.charged = bool(re.search(r"[A-Za-z]\d\+", self.text))
 
     # --- errors ---
 
     def error(self, what: str, remedy: str, at: int | None = None) -> FormulaError:
-        where = (self.at if at is None else at) + 1
-        return FormulaError(f"{self.original!r}, character {where}: {what}; {remedy}.")
+        where = self.where(self.at if at is None else at)
+        return FormulaError(f"{where}: {what}; {remedy}.")
 
-    def where(self) -> str:
-        return f"{self.original!r}, character {self.at + 1}"
+    def where(self, at: int) -> str:
+        return f"{self.original!r}, character {self.positions[min(at, len(self.text))] + 1}"
 
     # --- the grammar, from the whole to the parts ---
 
     def read(self) -> Reading:
+        joined = re.search(r"\s\+\s", self.original)
+        if joined:
+            where = f"{self.original!r}, character {joined.start() + 2}"
+            raise FormulaError(
+                f"{where}: '+' joins substances, not amounts; write one composition with dots, or wt%."
+            )
         parts = []
         while True:
             factor = self._multiplier()
-            parts.append(_times(self._sequence(""), factor))
+            parts.append(times(self._sequence(""), factor))
             if self.at >= len(self.text):
                 break
             character = self.text[self.at]
-            if character in _DOTS or (character == "." and self.at + 1 < len(self.text)):
+            if character in DOTS or (character == "." and self.at + 1 < len(self.text)):
                 self.at += 1
                 continue
             if character in ")]":
@@ -128,12 +145,15 @@ class _Reader:
             raise self.error(f"{character!r} is not expected here", "remove it")
         if not self.elements:
             raise self.error("there is no element in it", "write for example Fe3C", 0)
+        named = self.variables - set(self.ranges)
+        amounts, ranges = coupled(summed(parts), self.written)
         return Reading(
-            _summed(parts),
+            amounts,
             frozenset(self.elements),
-            self.variables - set(self.ranges),
-            self.ranges,
+            named,
+            ranges,
             self.splits,
+            counts=tuple(self.counts),
         )
 
     def _multiplier(self) -> Amount | None:
@@ -145,10 +165,9 @@ class _Reader:
         if found:
             self.at += found.end()
             return self._range(float(found[1]), float(found[2]))
-        found = re.match(rf"{_NUMBER}(?=[A-Z(\[□◻☐▢])", rest)
-        if found:
-            self.at += found.end()
-            return fixed(float(found[0]))
+        plain = self._fraction(r"(?=[A-Z(\[])") or self._number(rf"(?=[A-Z(\[{VACANCIES}])")
+        if plain is not None:
+            return plain
         found = re.match(rf"({_NUMBER}?{_LETTER})(?=[A-Z(\[])", rest)
         if found:
             self.at += found.end()
@@ -162,26 +181,26 @@ class _Reader:
             if character in closing or character in ",)]-" or self._is_dot():
                 break
             parts.append(self._item())
-        return _summed([_times(p.amounts, p.amount) for p in parts])
+        return summed([times(p.amounts, p.amount) for p in parts])
 
     def _is_dot(self) -> bool:
         character = self.text[self.at]
         # A dot between digits belongs to a number and is taken with it, so it never shows up here.
-        return character in _DOTS or character == "."
+        return character in DOTS or character == "."
 
     def _item(self) -> _Part:
         character = self.text[self.at]
         if character in "([":
             return self._bracket()
-        if character in _VACANCIES:
+        if character in VACANCIES:
             self.at += 1
             self._amount("")
-            return _Part(_nothing, None)
+            return _Part(nothing, None)
         found = re.match(r"Vac(?![a-z])", self.text[self.at :])
         if found:
             self.at += 3
             self._amount("")
-            return _Part(_nothing, None)
+            return _Part(nothing, None)
         symbol = self._symbol()
         self.elements.add(symbol)
         return _Part(lambda values: {symbol: 1.0}, self._amount(symbol))
@@ -192,10 +211,15 @@ class _Reader:
             if rest.startswith(generic) and not rest[len(generic) : len(generic) + 1].islower():
                 raise self.error(
                     f"{generic} stands for several elements",
-                    f"name the mix, for example ({example})"
-                    if generic != "Ln"
-                    else "name the elements, for example (La,Ce,Nd)",
+                    f"name them, for example {example}",
                 )
+        if rest.startswith("SI") and self.text.isupper():
+            raise self.error("'SI' is sulphur and iodine", "write Si for silicon")
+        roman = re.match(r"(?:I|V)\)", rest)
+        if roman and re.search(r"[a-z]\($", self.text[: self.at]):
+            raise self.error(
+                "an oxidation number and an element look alike here", "leave the number out"
+            )
         two, one = rest[:2], rest[:1]
         if len(two) == 2 and two[1].islower() and two in _KNOWN:
             self.at += 2
@@ -230,7 +254,7 @@ class _Reader:
             self.at += 1
             self.depth -= 1
             self._amount("")
-            return _Part(_nothing, None)
+            return _Part(nothing, None)
         occupants = [self._occupant(closing)]
         while self.text[self.at : self.at + 1] == ",":
             self.at += 1
@@ -246,7 +270,7 @@ class _Reader:
         inner = self._site(occupants)
         total = self._site_total()
         if total is not None:
-            return _Part(_scaled_to(inner, total), None)
+            return _Part(scaled_to(inner, total), None)
         return _Part(inner, self._amount(")"))
 
     def _occupant(self, closing: str) -> tuple[Amounts, bool]:
@@ -262,7 +286,7 @@ class _Reader:
                 if character in ",)]-" or self._is_dot():
                     break
                 items.append(self._item())
-            parts.append(_times(_summed([_times(p.amounts, p.amount) for p in items]), factor))
+            parts.append(times(summed([times(p.amounts, p.amount) for p in items]), factor))
             last_amount += [p.amount for p in items]
             if self.at < len(self.text) and self._is_dot():
                 self.at += 1
@@ -273,13 +297,13 @@ class _Reader:
         if self.text[self.at : self.at + 1] == "-":
             raise self.error("'-' is not expected in a bracket", "separate occupants with commas")
         stated = len(last_amount) == 1 and last_amount[0] is not None
-        return _summed(parts), stated
+        return summed(parts), stated
 
     def _site(self, occupants: list[tuple[Amounts, bool]]) -> Amounts:
         if len(occupants) == 1:
             return occupants[0][0]
         if all(stated for _, stated in occupants):
-            return _summed([amounts for amounts, _ in occupants])
+            return summed([amounts for amounts, _ in occupants])
         name = f"site {len(self.splits) + 1}"
         self.splits[name] = len(occupants)
         every = [amounts for amounts, _ in occupants]
@@ -309,12 +333,8 @@ class _Reader:
         rest = self.text[self.at :]
         if rest.startswith("{"):
             return self._braces()
-        expression = re.match(
-            rf"(?:{_NUMBER}?{_LETTER}(?:[+-]{_NUMBER}{_LETTER}?)+|{_NUMBER}(?:[+-]{_NUMBER}?{_LETTER})+"
-            rf"|{_NUMBER}?{_LETTER})(?![a-z])",
-            rest,
-        )
-        if expression:
+        expression = re.match(rf"(?:(?:{_TERM}[+-])+{_TERM}|{_NUMBER}?{_LETTER})(?![a-z])", rest)
+        if expression and re.search(_LETTER, expression[0]):
             self.at += expression.end()
             return self._named(expression[0])
         found = re.match(rf"\((?=[^A-Z]*{_LETTER})([^A-Z()]+)\)", rest)
@@ -326,17 +346,27 @@ class _Reader:
         if found:
             self.at += found.end()
             return self._range(float(found[1]), float(found[2]))
-        found = re.match(_NUMBER, rest)
-        if found:
-            self.at += found.end()
-            return fixed(float(found[0]))
-        return None
+        return self._fraction("") or self._number("")
+
+    def _fraction(self, before: str) -> Amount | None:
+        found = re.match(rf"(\d+)/(\d+){before}", self.text[self.at :])
+        if not found or int(found[2]) == 0:
+            return None
+        self.at += found.end()
+        return fixed(int(found[1]) / int(found[2]))
+
+    def _number(self, before: str) -> Amount | None:
+        found = re.match(_NUMBER + before, self.text[self.at :])
+        if not found:
+            return None
+        self.at += found.end()
+        return fixed(float(found[0]))
 
     def _charge(self, symbol: str) -> None:
         rest = self.text[self.at :]
-        found = re.match(r"\^\{?\d?[+-]\}?|\^\{?[+-]?\d\}?", rest)
-        if found:
-            self.at += found.end()
+        repeated = re.match(r"\+{2,4}|--", rest)
+        if repeated:
+            self.at += repeated.end()
             return
         if re.match(rf"\d?[+]{_LETTER}(?![a-z])", rest):
             return  # 2+x is an amount
@@ -351,8 +381,8 @@ class _Reader:
         if found and not (joins and not self.charged):
             self.at += found.end()
             return
-        found = re.match(r"\d-(?=\d)", rest)
-        if found and symbol in _ANIONS and self.charged:
+        found = re.match(r"\d?-(?=\d)", rest)
+        if found and symbol in (*_ANIONS, ")") and self.charged:
             self.at += found.end()
 
     def _braces(self) -> Amount:
@@ -367,62 +397,13 @@ class _Reader:
         found = re.fullmatch(rf"({_NUMBER})-({_NUMBER})", text)
         if found:
             return self._range(float(found[1]), float(found[2]))
-        amount = arithmetic(text, self.where())
+        amount = arithmetic(text, self.where(self.at))
         self.variables |= amount.variables
+        self.counts.append(amount)
         return amount
 
     def _range(self, first: float, second: float) -> Amount:
         name = f"range {len(self.ranges) + 1}"
         self.ranges[name] = (min(first, second), max(first, second))
+        self.written[name] = (first, second)
         return variable(name)
-
-
-def _dotted(text: str) -> str:
-    """Tell a full stop that joins parts from a decimal point: before water, and between multiplied oxides.
-
-    Who writes a raised dot anywhere means every full stop as a decimal point.
-    """
-    if any(dot in text for dot in _DOTS):
-        return text
-    text = re.sub(r"\.((?:\d+\.)?\d*H2O)", r"·\1", text)
-    if re.match(r"\d+(?:\.\d+)?[A-Z]", text):
-        text = re.sub(r"(?<=[A-Za-z\d)])\.(?=\d*[A-Z(])", "·", text)
-    return text
-
-
-def _nothing(values: Values) -> dict[str, float]:
-    return {}
-
-
-def _times(amounts: Amounts, amount: Amount | None) -> Amounts:
-    if amount is None:
-        return amounts
-
-    def scaled(values: Values) -> dict[str, float]:
-        factor = amount.value(values)
-        return {symbol: factor * count for symbol, count in amounts(values).items()}
-
-    return scaled
-
-
-def _summed(parts: list[Amounts]) -> Amounts:
-    if len(parts) == 1:
-        return parts[0]
-
-    def total(values: Values) -> dict[str, float]:
-        found: dict[str, float] = {}
-        for part in parts:
-            for symbol, count in part(values).items():
-                found[symbol] = found.get(symbol, 0.0) + count
-        return found
-
-    return total
-
-
-def _scaled_to(amounts: Amounts, total: float) -> Amounts:
-    def scaled(values: Values) -> dict[str, float]:
-        found = amounts(values)
-        present = sum(found.values())
-        return {s: c * total / present for s, c in found.items()} if present else found
-
-    return scaled

@@ -3,7 +3,8 @@
 from __future__ import annotations
 
 import itertools
-from collections.abc import Mapping
+import math
+from collections.abc import Mapping, Sequence
 
 import numpy as np
 from numpy.typing import NDArray
@@ -13,11 +14,13 @@ from phaseid.physics.elements import ELEMENT_COUNT, SYMBOLS, atomic_masses
 
 Floats = NDArray[np.float64]
 Ranges = Mapping[str, tuple[float, float]]
+Factors = list[list[dict[str, float]]]
 
 # Rounding in 1-x-y must not make a composition impossible.
 _TOLERANCE = 1e-9
 _POSITION = {symbol: i for i, symbol in enumerate(SYMBOLS)}
 _MOST_CORNERS = 512
+_HALVINGS = 24
 
 
 def points(reading: Reading, ranges: Ranges, wanted: int) -> list[Floats]:
@@ -42,19 +45,79 @@ def points(reading: Reading, ranges: Ranges, wanted: int) -> list[Floats]:
 
 
 def corners(reading: Reading, ranges: Ranges) -> list[Floats]:
-    """Possible compositions at the ends of all ranges and with each occupant alone on its site."""
-    ends = [[(name, low), (name, high)] for name, (low, high) in ranges.items()]
-    alone = [
-        [[(f"{s}.{i}", 1.0 if i == j else 0.0) for i in range(n)] for j in range(n)]
+    """Possible compositions at the ends of all ranges and with each occupant alone on its site.
+
+    Where an end is impossible because an amount would be negative (``Fe{1-x-y}`` with both large), the
+    last possible composition on the way to it counts instead. Of very many corners a part is taken,
+    the lightest and the heaviest among them.
+    """
+    factors: list[list[dict[str, float]]] = [
+        [{name: end} for end in dict.fromkeys(ends)] for name, ends in ranges.items()
+    ]
+    factors += [
+        [{f"{s}.{i}": float(i == j) for i in range(n)} for j in range(n)]
         for s, n in reading.splits.items()
     ]
-    found = []
-    choices = itertools.product(*[[[e] for e in pair] for pair in ends], *alone)
-    for choice in itertools.islice(choices, _MOST_CORNERS):
-        values = dict(itertools.chain.from_iterable(choice))
-        made = _composition(reading, values)
+    found: list[Floats] = []
+    for choice in _choices(reading, factors):
+        made = _composition(reading, _joined(factors, choice))
         if made is not None:
             found.append(made)
+        else:
+            found += _borders(reading, factors, choice)
+    return list({row.round(6).tobytes(): row for row in found}.values())
+
+
+def _joined(factors: Factors, choice: Sequence[int]) -> dict[str, float]:
+    return {k: v for f, c in zip(factors, choice, strict=True) for k, v in f[c].items()}
+
+
+def _choices(reading: Reading, factors: Factors) -> list[tuple[int, ...]]:
+    sizes = [len(f) for f in factors]
+    if math.prod(sizes) <= _MOST_CORNERS:
+        return list(itertools.product(*map(range, sizes)))
+    lightest, heaviest = _by_weight(reading, factors)
+    drawn = np.random.default_rng(0).integers(0, sizes, (_MOST_CORNERS - 2, len(sizes)))
+    chosen = [lightest, heaviest, *(tuple(int(c) for c in row) for row in drawn)]
+    return list(dict.fromkeys(chosen))
+
+
+def _by_weight(reading: Reading, factors: Factors) -> tuple[tuple[int, ...], tuple[int, ...]]:
+    """Corners that look lightest and heaviest when each factor is tried by itself."""
+    least, most = [], []
+    start = [0] * len(factors)
+    numbers = np.arange(1, ELEMENT_COUNT + 1)
+    for at, factor in enumerate(factors):
+        means = []
+        for c in range(len(factor)):
+            row = _composition(reading, _joined(factors, [*start[:at], c, *start[at + 1 :]]))
+            means.append(0.0 if row is None else float(row @ numbers))
+        least.append(int(np.argmin(means)))
+        most.append(int(np.argmax(means)))
+    return tuple(least), tuple(most)
+
+
+def _borders(reading: Reading, factors: Factors, choice: Sequence[int]) -> list[Floats]:
+    """Last possible compositions on the edges that lead to an impossible corner."""
+    found = []
+    there = _joined(factors, choice)
+    for at, factor in enumerate(factors):
+        for c in range(len(factor)):
+            if c == choice[at]:
+                continue
+            here = _joined(factors, [*choice[:at], c, *choice[at + 1 :]])
+            best = _composition(reading, here)
+            if best is None:
+                continue
+            low, high = 0.0, 1.0
+            for _ in range(_HALVINGS):
+                middle = (low + high) / 2
+                made = _composition(
+                    reading, {k: v + middle * (there[k] - v) for k, v in here.items()}
+                )
+                low, high = (low, middle) if made is None else (middle, high)
+                best = best if made is None else made
+            found.append(best)
     return found
 
 

@@ -61,12 +61,13 @@ def test_published_hard_formulas(shared_folder):
             assert low == pytest.approx(float(expected), abs=0.01), row["formula_text"]
             assert high == pytest.approx(float(expected), abs=0.01), row["formula_text"]
         elif span:
-            # The file takes the middle of a numeric range and states the range of site choices; two
-            # readings of one it calls ambiguous may differ by little.
+            # The file takes the middle of a numeric range and states the range of site choices.
             low, high = z_range(row["formula_text"])
             first, last = (float(v) for v in span.split("-"))
-            assert low <= last + 0.8, row["formula_text"]
-            assert high >= first - 0.8, row["formula_text"]
+            # Comancheite: the file's figure takes N3-24 as a range, its note, as we do, as 24 N(3-).
+            room = 0.8 if row["phase"] == "Comancheite" else 0.02
+            assert low <= first + room, row["formula_text"]
+            assert high >= last - room, row["formula_text"]
         else:
             # No amounts, or a fault in the source: a refusal with a remedy, or a range.
             try:
@@ -104,6 +105,33 @@ def test_published_hard_formulas(shared_folder):
         ("at% Al50 Ni50", "AlNi"),
         ("wt% Fe bal Cr18", "wt% Fe82 Cr18"),
         ("wt% SiO2 100", "SiO2"),
+        ("Fe^3+^_2_O_3_", "Fe2O3"),
+        ("Fe<sup>3+</sup><sub>2</sub>O<sub>3</sub>", "Fe2O3"),
+        ("Mg_2SiO_{4}", "Mg2SiO4"),
+        ("Fe+++2O3", "Fe2O3"),
+        ("Fe(II)Fe(III)2O4", "Fe3O4"),
+        ("CaSO4·½H2O", "Ca2S2O9H2"),
+        ("CaSO4·1/2H2O", "Ca2S2O9H2"),
+        ("CaSO4 x 2H2O", "CaSO6H4"),
+        ("CaSO4:2H2O", "CaSO6H4"),
+        ("Na2O.11Al2O3", "Na2Al22O34"),
+        ("(Mg0,9Fe0,1)2SiO4", "Mg1.8Fe0.2SiO4"),
+        ("{Ca3}[Al2](Si3)O12", "Ca3Al2Si3O12"),
+        ("Cu1+Fe3+S2-2", "CuFeS2"),
+        ("Cu2+Cl-2", "CuCl2"),
+        ("[Hg2]2+Cl2", "HgCl"),
+        ("K(V4+1.75V5+0.25)O4", "KV2O4"),
+        ("Na2(UO2)(CO3)2·~3H2O", "Na2UC2O11H6"),
+        ("Fe2O3·nH2O (n = 1)", "Fe2O4H2"),
+        ("Na{x}K{y}Cl (x = 0.5, y = 0.5)", "NaKCl2"),
+        ("FeS{x}; 0.9 < x < 1.1", "FeS"),
+        ("Mg4.5-2.5Fe0.5-2.5O5", "Mg3.5Fe1.5O5"),
+        ("wt%Fe74Cr18Ni8", "wt% Fe74 Cr18 Ni8"),
+        ("74Fe 18Cr 8Ni wt%", "wt% Fe74 Cr18 Ni8"),
+        ("Fe 74 wt%, Cr 18 wt%, Ni 8 wt%", "wt% Fe74 Cr18 Ni8"),
+        ("wt% Fe 74,5 Cr 25,5", "wt% Fe74.5 Cr25.5"),
+        ("Ti-6Al-4V", "wt% Ti90 Al6 V4"),
+        ("mol% SiO2 50 Na2O 50", "Na2SiO3"),
     ],
 )
 def test_spellings_of_one_composition(text, same):
@@ -141,6 +169,23 @@ def test_impossible_corners_are_passed_over():
     assert (rows >= 0).all()
     assert (formula.extremes() >= 0).all()
     assert len(formula.extremes()) == 3
+    # Where the corner itself is impossible, the border is found.
+    cut = parse("Fe{1-x-y}Mg{x}Mn{y}CO3", {"x": (0, 0.6), "y": (0, 0.6)}).extremes()
+    for amounts in ({"Mg": 0.6, "Mn": 0.4}, {"Mg": 0.4, "Mn": 0.6}, {"Fe": 1}):
+        wanted = from_atoms({**amounts, "C": 1, "O": 3})
+        assert np.abs(cut - wanted).max(axis=1).min() < 1e-6
+
+
+def test_many_ranges_still_reach_the_lightest_and_the_heaviest():
+    parts = ("PbO", "BaO", "ZnO", "Fe2O3", "CaO", "K2O", "TiO2", "MnO", "MgO", "B2O3", "Li2O")
+    glass = parse("wt% " + " ".join(f"{p} 0-9" for p in parts))
+    z = mean_atomic_number(glass.extremes(), "mass")
+    middle = mean_atomic_number(glass.mass_fractions(), "mass")
+    assert z.min() == pytest.approx(
+        float(mean_atomic_number(parse("B2O3").mass_fractions())), abs=2
+    )
+    assert z.max() > middle + 15
+    assert len(z) <= 512
 
 
 @pytest.mark.parametrize(
@@ -159,6 +204,14 @@ def test_impossible_corners_are_passed_over():
         ("Fe{1-}", 3, "no amount"),
         ("Fe{__import__('os')}", 3, "no amount"),
         ("Fee2", 3, "no element"),
+        # Positions are those of what was typed, not of a cleaned copy.
+        ("Mg 2 Si Qq4", 9, "no element"),
+        ("Fe<sub>2</sub>Q", 15, "no element"),
+        ("SIO2", 1, "sulphur and iodine"),
+        ("M23C6", 1, "several elements"),
+        ("TIO2", 1, "no element"),
+        ("Cu(I)2O", 4, "look alike"),
+        ("FeTiO3 + Fe2O3", 8, "joins substances"),
     ],
 )
 def test_faults_say_where_and_what(text, character, word):
@@ -192,6 +245,31 @@ def test_other_impossible_formulas_are_refused(text):
         parse(text)
 
 
+@pytest.mark.parametrize(
+    ("text", "expected"),
+    [
+        ("Fe1-xS", {"x": (0, 1)}),
+        ("Pb6-3xBi2+xS9", {"x": (0, 2)}),
+        ("TiO2-x", {"x": (0, 1)}),
+        ("WC{x}", {"x": (0, 1)}),
+        ("wt% Ni{100-x-y} Cr{x} Al{y}", {"x": (0, 100), "y": (0, 100)}),
+        ("YBa2Cu3O7-δ (δ = 0-0.5)", {"w": (0, 0.5)}),
+        ("Ca(H2O)n (n < 4)", {"n": (0, 4)}),
+    ],
+)
+def test_ranges_written_behind_or_left_out(text, expected):
+    assert parse(text).variables == expected
+
+
+def test_mixtures_that_contradict_themselves_are_refused():
+    with pytest.raises(FormulaError, match="two kinds of percent"):
+        parse("Fe 74 wt% Cr 26 at%")
+    with pytest.raises(FormulaError, match="two balances"):
+        parse("wt% Fe bal Cr bal")
+    with pytest.raises(FormulaError, match="leaves a balance of -5"):
+        parse("wt% Fe bal Cr 60 Ni 45")
+
+
 def test_wrong_ranges_are_refused():
     with pytest.raises(FormulaError, match="lower end first"):
         parse("Fe{1-x}S", {"x": (0.5, 0.1)})
@@ -218,8 +296,15 @@ def test_plain_formulas_agree_with_pymatgen(amounts):
         assert ours[SYMBOLS.index(symbol)] == pytest.approx(share, rel=1e-6)
 
 
-@settings(max_examples=300, deadline=None)
-@given(st.text(alphabet="ABCFeMgSiOH0123456789.,()[]{}+-·xyzΣ= %wt", max_size=30))
+PIECES = (
+    *"ABCOHNIVx012.,()[]{}+-·Σ=<>~^_/ %&;δ½□",
+    "Fe", "Mg", "Si", "wt% ", "at%", "2+", "{1-x}", "1-x", "<sub>", "H2O", "(x = 0-1)", "0-0.5", "REE",
+    "&#9744;", "bal",
+)  # fmt: skip
+
+
+@settings(max_examples=400, deadline=None)
+@given(st.lists(st.sampled_from(PIECES), max_size=14).map("".join))
 def test_any_text_gives_a_composition_or_one_sentence(text):
     try:
         row = parse(text).mass_fractions()
@@ -228,3 +313,25 @@ def test_any_text_gives_a_composition_or_one_sentence(text):
     else:
         assert row.sum() == pytest.approx(1)
         assert (row >= 0).all()
+
+
+@settings(max_examples=100, deadline=None)
+@given(
+    st.dictionaries(elements, counts, min_size=1, max_size=4),
+    st.dictionaries(elements, counts, min_size=1, max_size=4),
+    st.integers(1, 9),
+)
+def test_brackets_multiply_and_dots_add(first, second, times):
+    one, two = ("".join(f"{s}{n}" for s, n in part.items()) for part in (first, second))
+    total = {s: first.get(s, 0) + times * second.get(s, 0) for s in {*first, *second}}
+    for text in (f"{one}({two}){times}", f"{one}·{times}({two})", f"{one}[{two}]{times}"):
+        np.testing.assert_allclose(parse(text).mass_fractions(), from_atoms(total), atol=1e-12)
+
+
+@settings(max_examples=60, deadline=None)
+@given(st.floats(0, 1), st.floats(0, 1))
+def test_variants_stay_between_the_extremes(a, b):
+    formula = parse("(Mg{x}Fe{1-x})2SiO4", {"x": (min(a, b), max(a, b))})
+    z = mean_atomic_number(formula.variants(9)[0])
+    ends = mean_atomic_number(formula.extremes())
+    assert ends.min() - 1e-4 <= z.min() <= z.max() <= ends.max() + 1e-4
