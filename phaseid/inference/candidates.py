@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from functools import cached_property
 
 import numpy as np
@@ -32,6 +32,8 @@ class CandidateSet:
         Weight of each row within its phase; sums to one over each phase.
     mass_fractions : ndarray of shape (R, 103)
         Composition of each row, index Z - 1.
+    upper : float or None
+        End of the signal axis; None takes room above the largest signal.
     """
 
     names: Sequence[str]
@@ -40,10 +42,11 @@ class CandidateSet:
     own_sd: Floats
     share: Floats
     mass_fractions: NDArray[np.float32]
+    upper: float | None = None
     axis: SignalAxis = field(init=False, repr=False)
 
     def __post_init__(self) -> None:
-        upper = max(0.5, 1.2 * float(self.signal.max(initial=0.0)))
+        upper = self.upper or max(0.5, 1.2 * float(self.signal.max(initial=0.0)))
         object.__setattr__(self, "axis", SignalAxis(upper))
 
     @property
@@ -75,6 +78,10 @@ class CandidateSet:
         """Standard deviation of each phase's signal over its range and own error, shape (P,)."""
         second = self.by_phase(self.share * (self.signal**2 + self.own_sd**2))
         return np.sqrt(np.maximum(second - self.mean_signal**2, 0.0))
+
+    def seen_as(self, signal: Floats, own_sd: Floats) -> CandidateSet:
+        """The same candidates with other signals on the same axis, as features of one size show them."""
+        return replace(self, signal=signal, own_sd=own_sd, upper=self.axis.upper)
 
     def by_phase(self, values: NDArray[np.floating]) -> Floats:
         """Sum row values over the rows of each phase; shape (..., R) to (..., P)."""

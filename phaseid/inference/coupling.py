@@ -8,6 +8,7 @@ whatever the number of rules.
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
@@ -44,7 +45,7 @@ def couple(
     coupling: Coupling,
     problem: ScaleProblem,
     particles: Particles,
-    candidates: CandidateSet,
+    set_of: Callable[[int], CandidateSet],
     weights: Floats,
     known: dict[int, int],
     seed: int,
@@ -56,8 +57,8 @@ def couple(
     coupling : Coupling
     problem : ScaleProblem
     particles : Particles
-    candidates : CandidateSet
-        P phases in R rows.
+    set_of : callable
+        The candidates as a given cluster shows them, P phases in R rows.
     weights : ndarray of shape (K, R)
         Prior weight of each row for each cluster, evidence included.
     known : mapping of int to int
@@ -79,13 +80,13 @@ def couple(
         [
             np.full(len(chosen), known[k])
             if k in known
-            else _draw_identities(problem, particles, candidates, weights[k], k, chosen, generator)
+            else _draw_identities(problem, particles, set_of(k), weights[k], k, chosen, generator)
             for k in range(len(weights))
         ],
         axis=1,
     )
     factor = _joint_factor(coupling, identity)
-    clusters, phases = len(weights), candidates.size
+    clusters, phases = len(weights), set_of(0).size
     term = np.ones((clusters, phases))
     none_term = np.ones(clusters)
     mean = max(float(factor.mean()), 1e-12)

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 
 import numpy as np
@@ -48,6 +48,8 @@ class Question:
         See `ScaleProblem`.
     coupling : Coupling or None
         What the identity of one cluster says about another.
+    small : mapping of int to CandidateSet
+        Clusters whose features are too small to show bulk signals, and the signals they show instead.
     """
 
     candidates: CandidateSet
@@ -61,6 +63,11 @@ class Question:
     none_weight: float = NONE_WEIGHT
     drift: tuple[float, float] = (0.0, 0.0)
     coupling: Coupling | None = None
+    small: Mapping[int, CandidateSet] = field(default_factory=dict)
+
+    def set_of(self, k: int) -> CandidateSet:
+        """The candidates as cluster k shows them."""
+        return self.small.get(k, self.candidates)
 
 
 @dataclass(frozen=True)
@@ -122,6 +129,8 @@ def rank(question: Question, seed: int = 0, effective: float = 2000.0) -> Rankin
     none_density = np.full(len(candidates.axis), 1.0 / candidates.axis.nodes[-1])
     none = question.none_weight * question.none_evidence
     densities = weights.astype(np.float32) @ candidates.kernels
+    for k, seen_as in question.small.items():
+        densities[k] = weights[k].astype(np.float32) @ seen_as.kernels
     densities = densities.astype(float) + none[:, None] * none_density
     problem = ScaleProblem(
         candidates.axis,
@@ -142,7 +151,7 @@ def rank(question: Question, seed: int = 0, effective: float = 2000.0) -> Rankin
     probability = candidates.by_phase(rows)
     if question.coupling is not None and len(rows) > 1:
         particles, coupling_term, none_term = couple(
-            question.coupling, problem, particles, candidates, weights, question.known, seed
+            question.coupling, problem, particles, question.set_of, weights, question.known, seed
         )
         rows, none = _normalised(rows * coupling_term[:, candidates.phase], none * none_term)
         probability = candidates.by_phase(rows)
@@ -191,8 +200,10 @@ def _grey_factor(question: Question, deposits: Floats) -> Floats:
     candidates = question.candidates
     factor = deposits.astype(np.float32) @ candidates.kernels.T
     for k, seen in enumerate(question.observations):
+        if k in question.small:
+            factor[k] = question.set_of(k).kernels @ deposits[k].astype(np.float32)
         if seen.clipped is not None:
-            under = candidates.cumulative
+            under = question.set_of(k).cumulative
             side = under if seen.clipped == "low" else 1.0 - under
             factor[k] = side @ deposits[k].astype(np.float32)
     return np.asarray(factor, dtype=float)

@@ -21,7 +21,9 @@ from phaseid.session.answers import Analysis, Candidate, ClusterAnswer, Notice, 
 from phaseid.session.candidates import Candidates
 from phaseid.session.knowledge import Knowledge
 from phaseid.session.marking import Marked, Place, extra_phases, gather, nearest
+from phaseid.session.plugged import plugin_evidence
 from phaseid.session.settling import settle
+from phaseid.session.smallness import Feature, small_features
 from phaseid.session.state import State
 
 TOP = 8
@@ -38,6 +40,7 @@ class Picture:
     energy_keV: float | None
     tilt_deg: float | None
     clusters: tuple[Cluster, ...]
+    diameters_um: tuple[float, ...] = ()
 
 
 def analyse(
@@ -79,6 +82,9 @@ def analyse(
     observations = _observations(pictures, kept, series)
     places = _places(pictures, kept, series)
     marked = gather(state, knowledge, candidates, observations, places, [p.index for p in pictures])
+    marked.evidence *= plugin_evidence(
+        state, knowledge, candidates, _members(pictures, kept, series), len(observations)
+    )
     notices += _drift_notices(pictures, series)
     drift = np.column_stack([series.gain, series.offset])
     ranking = None
@@ -86,6 +92,10 @@ def analyse(
         refuse_reversed(marked.anchors, candidates.departure)
         question = _question(state, knowledge, candidates, observations, marked)
         ranking = rank(question, seed)
+        small, told = small_features(ranking, candidates, _sizes(pictures, kept, series))
+        if small:
+            ranking = rank(replace(question, small=small), seed)
+            notices += told
         notices += _evidence_notices(question, marked)
     clusters = _answers(state, candidates, pictures, kept, series, marked, ranking, top)
     advice: tuple[Measure, ...] = ()
@@ -144,6 +154,34 @@ def _observations(
     return observations
 
 
+def _sizes(
+    pictures: Sequence[Picture], kept: Sequence[tuple[list[int], ImageGreys]], series: Series
+) -> list[Feature]:
+    """For each family, how large its features are and which family surrounds them."""
+    area = np.zeros(len(series.grey))
+    sizes: list[list[float]] = [[] for _ in series.grey]
+    for picture, (members, greys), families in zip(pictures, kept, series.member, strict=True):
+        for n, family, share in zip(members, families, greys.area, strict=True):
+            area[family] += share
+            if picture.diameters_um:
+                sizes[family].append(picture.diameters_um[n])
+    matrix = int(area.argmax()) if len(area) else 0
+    return [
+        Feature(k, matrix, float(np.median(found)) if found else float("nan"))
+        for k, found in enumerate(sizes)
+    ]
+
+
+def _members(
+    pictures: Sequence[Picture], kept: Sequence[tuple[list[int], ImageGreys]], series: Series
+) -> list[tuple[int, list[Cluster], list[int]]]:
+    """For each image, the clusters that take part and their families."""
+    return [
+        (picture.index, [picture.clusters[n] for n in members], [int(f) for f in families])
+        for picture, (members, _), families in zip(pictures, kept, series.member, strict=True)
+    ]
+
+
 def _places(
     pictures: Sequence[Picture], kept: Sequence[tuple[list[int], ImageGreys]], series: Series
 ) -> list[Place]:
@@ -178,7 +216,7 @@ def _question(
     same = (
         np.where(candidates.variable, 1.0, 0.05) if state.distinct else np.ones(candidates.set.size)
     )
-    coupling = Coupling(knowledge.coexistence(candidates), same)
+    coupling = Coupling(knowledge.coexistence(candidates, state.contexts), same)
     return Question(
         candidates.set,
         candidates.departure,

@@ -9,7 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from phaseid.errors import InputError
-from phaseid.hooks.specs import Situation
+from phaseid.hooks.specs import ClusterSummary, Situation
 from phaseid.inference.candidates import CandidateSet
 from phaseid.inference.departure import Departure
 from phaseid.phases.catalogue import fold
@@ -83,7 +83,9 @@ class Candidates:
     extra: tuple[str, ...] = ()
     elsewhere: dict[float, Floats] = field(default_factory=dict, compare=False, repr=False)
 
-    def situation(self, contexts: Sequence[str]) -> Situation:
+    def situation(
+        self, contexts: Sequence[str], clusters: Sequence[ClusterSummary] = ()
+    ) -> Situation:
         """What plugins may look at; the hole is not among the phases."""
         return Situation(
             self.conditions,
@@ -92,6 +94,7 @@ class Candidates:
             np.array([s.mean_atomic_number for s in self.shown[:-1]]),
             np.array([s.eta for s in self.shown[:-1]]),
             self.set.mean_signal[:-1],
+            tuple(clusters),
         )
 
     def signals_at(self, energy_keV: float) -> Floats:

@@ -11,11 +11,12 @@ from numpy.typing import NDArray
 
 from phaseid.errors import InputError
 from phaseid.hooks.host import PluginHost, make_host
+from phaseid.hooks.specs import ClusterSummary
 from phaseid.inference.candidates import CandidateSet
 from phaseid.inference.departure import smooth_departure
 from phaseid.inference.evidence import visibility
 from phaseid.phases.catalogue import Catalogue, fold, merge
-from phaseid.phases.contexts import ContextTree
+from phaseid.phases.contexts import Coexistence, ContextTree
 from phaseid.phases.formula import FormulaError, parse
 from phaseid.phases.kept import load_kept
 from phaseid.phases.records import ABUNDANCE, Phase
@@ -77,11 +78,11 @@ class Knowledge:
         """
         host = host or make_host()
         read = []
-        for path in host.databases():
+        for plugin, path in host.databases_by_plugin():
             try:
                 read.append(load_kept(path))
             except InputError as error:
-                host.report("database", "loading", str(error))
+                host.report(plugin, "register_databases", str(error))
         read += [load_kept(p) for p in databases]
         return cls(host, merge(read), learned if learned is not None else Learned())
 
@@ -173,20 +174,27 @@ class Knowledge:
         return weights
 
     def image_factors(
-        self, contexts: Sequence[str], candidates: Candidates, image: Mapping[str, Any]
+        self,
+        contexts: Sequence[str],
+        candidates: Candidates,
+        clusters: Sequence[ClusterSummary],
+        image: Mapping[str, Any],
     ) -> Floats:
-        """Factors of plugins' extra evidence about an image, shape (P,)."""
-        situation = candidates.situation(self.check_contexts(contexts))
-        factors = np.ones(candidates.set.size)
+        """Factors of plugins' extra evidence about an image, shape (clusters, P)."""
+        situation = candidates.situation(self.check_contexts(contexts), clusters)
+        factors = np.ones((len(clusters), candidates.set.size))
         for name, factor in self.host.evidence(situation, image).items():
             position = candidates.lookup.get(fold(name))
             if position is not None:
-                factors[position] *= factor
+                factors[:, position] *= factor
         return factors
 
-    def coexistence(self, candidates: Candidates) -> dict[tuple[int, int], float]:
-        """Coexistence rules as factors on pairs of phase indices."""
-        return _pairs(self.host, candidates)
+    def coexistence(
+        self, candidates: Candidates, contexts: Sequence[str] = ()
+    ) -> dict[tuple[int, int], float]:
+        """Coexistence rules that hold in contexts, as factors on pairs of phase indices."""
+        full = self.check_contexts(contexts)
+        return _pairs([r for r in self.host.coexistence() if r.holds(full)], candidates)
 
     def _make_candidates(self, conditions: Conditions, formulas: tuple[str, ...]) -> Candidates:
         given = [given_phase(text, self.catalogue) for text in formulas]
@@ -276,9 +284,11 @@ def _candidates(table: PhaseTable) -> Candidates:
     )
 
 
-def _pairs(host: PluginHost, candidates: Candidates) -> dict[tuple[int, int], float]:
+def _pairs(
+    rules: Sequence[Coexistence], candidates: Candidates
+) -> dict[tuple[int, int], float]:
     pairs: dict[tuple[int, int], float] = {}
-    for rule in host.coexistence():
+    for rule in rules:
         first = [candidates.lookup[fold(n)] for n in rule.first if fold(n) in candidates.lookup]
         second = [candidates.lookup[fold(n)] for n in rule.second if fold(n) in candidates.lookup]
         for p in first:

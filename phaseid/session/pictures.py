@@ -8,6 +8,8 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any, TypeVar
 
+import numpy as np
+
 from phaseid.image.clustering import Cluster, Clustering
 from phaseid.image.notices import Finding
 from phaseid.image.reading import GreyImage, read_image
@@ -32,6 +34,7 @@ class Summary:
     energy_keV: float | None
     tilt_deg: float | None
     clusters: tuple[Cluster, ...]
+    diameters_um: tuple[float, ...]
     findings: tuple[Finding, ...]
 
 
@@ -76,6 +79,7 @@ class Pictures:
                 image.energy_keV,
                 image.tilt_deg,
                 tuple(made.clusters),
+                _diameters(made),
                 (*image.flags, *made.warnings),
             )
         return self._summaries[key]
@@ -105,6 +109,21 @@ class Pictures:
             return cluster(self.image(ref), edits, progress)
 
         return _kept(self._clusterings, (ref.path, ref.page, edits), make, KEPT_CLUSTERINGS)
+
+
+def _diameters(made: Clustering) -> tuple[float, ...]:
+    """Diameter of each cluster's typical region by area; NaN where the pixel size is not known."""
+    found = []
+    for one in made.clusters:
+        mine = made.region_table[made.region_table["cluster"] == one.id]
+        order = np.argsort(mine["equivalent_diameter_um"], kind="stable")
+        share = np.cumsum(mine["pixels"][order])
+        if not len(share) or not np.isfinite(mine["equivalent_diameter_um"]).all():
+            found.append(float("nan"))
+            continue
+        half = order[min(int(np.searchsorted(share, share[-1] / 2)), len(order) - 1)]
+        found.append(float(mine["equivalent_diameter_um"][half]))
+    return tuple(found)
 
 
 def _kept(cache: OrderedDict[Any, T], key: object, make: Callable[[], T], most: int) -> T:

@@ -216,7 +216,16 @@ class Session:
         for i, ref in enumerate(state.images):
             part = None if progress is None else _part(progress, i, count)
             seen = self.pictures.summary(ref, _edits(state, i), part)
-            pictures.append(Picture(i, ref.path, seen.energy_keV, seen.tilt_deg, seen.clusters))
+            pictures.append(
+                Picture(
+                    i,
+                    ref.path,
+                    seen.energy_keV,
+                    seen.tilt_deg,
+                    seen.clusters,
+                    seen.diameters_um,
+                )
+            )
         groups = [pictures] if state.same_settings else [[p] for p in pictures]
         return [
             analyse(state, self.knowledge, group, top=top, with_advice=with_advice)
