@@ -5,13 +5,15 @@ from __future__ import annotations
 import importlib
 import importlib.util
 import os
-from collections.abc import Iterable, Mapping, Sequence
+import sys
+from collections.abc import Callable, Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from pathlib import Path
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING, Any, TypeVar
 
 import pluggy
 
+from phaseid.hooks import checked
 from phaseid.hooks.markers import PROJECT
 
 if TYPE_CHECKING:
@@ -22,6 +24,12 @@ if TYPE_CHECKING:
     from phaseid.phases.contexts import Coexistence, Context
     from phaseid.physics.elemental import BackscatterModel
 
+T = TypeVar("T")
+
+# What a plugin can do wrong; leaving the program is not a plugin's to decide.
+FAILURES = (Exception, SystemExit)
+
+SHIPS = "ships with phaseid"
 # The plugins that ship, in one place; each is an ordinary plugin.
 BUILT_IN = (
     "phaseid_plugins.databases",
@@ -77,40 +85,64 @@ class PluginHost:
     def add(self, plugin: object, name: str, origin: str) -> None:
         """Register a plugin object."""
         if name in self._origin:
-            self._problem(name, "loading", f"another plugin is called {name!r}; rename one")
+            self._problem(
+                name,
+                "loading",
+                f"a second plugin of this name, from {origin}, is left out; rename it",
+            )
             return
         self._origin[name] = origin
         try:
             self._manager.register(plugin, name)
+            # A misspelt hook would pass silently.
             self._manager.check_pending()
-        except Exception as error:
+            self._refuse_wrappers(plugin)
+        except FAILURES as error:
             if self._manager.get_plugin(name) is plugin:
                 self._manager.unregister(plugin)
             self._problem(name, "loading", _said(error))
 
+    def _refuse_wrappers(self, plugin: object) -> None:
+        for caller in self._manager.get_hookcallers(plugin) or ():
+            for one in caller.get_hookimpls():
+                if one.plugin is plugin and (one.wrapper or one.hookwrapper):
+                    raise TypeError(
+                        f"{caller.name} is a wrapper; give a plain function, each is called on its own"
+                    )
+
     def add_module(self, module: str, origin: str) -> None:
         """Import a module by name and register it."""
         try:
-            self.add(importlib.import_module(module), module, origin)
-        except Exception as error:
-            self._failed(module, origin, error)
+            plugin = importlib.import_module(module)
+        except FAILURES as error:
+            self.failed(module, origin, error)
+            return
+        self.add(plugin, module, origin)
 
     def add_file(self, path: Path) -> None:
         """Run a plain Python file and register it."""
         name = f"file {path.stem}"
+        if name in self._origin:
+            self.add(None, name, str(path))
+            return
+        module_name = f"phaseid_plugin_file_{path.stem}"
         try:
-            spec = importlib.util.spec_from_file_location(f"phaseid_plugin_{path.stem}", path)
+            spec = importlib.util.spec_from_file_location(module_name, path)
             if spec is None or spec.loader is None:
                 raise ImportError(f"{path} is no Python file")
             module = importlib.util.module_from_spec(spec)
+            # Dataclasses look their module up while it runs.
+            sys.modules[module_name] = module
             spec.loader.exec_module(module)
-        except (Exception, SystemExit) as error:
-            self._failed(name, str(path), error)
+        except FAILURES as error:
+            sys.modules.pop(module_name, None)
+            self.failed(name, str(path), error)
             return
         self.add(module, name, str(path))
 
-    def _failed(self, name: str, origin: str, error: BaseException) -> None:
-        self._origin[name] = origin
+    def failed(self, name: str, origin: str, error: BaseException) -> None:
+        """Note a plugin that could not be loaded."""
+        self._origin.setdefault(name, origin)
         self._problem(name, "loading", _said(error))
 
     def report(self, plugin: str, moment: str, message: str) -> None:
@@ -127,7 +159,7 @@ class PluginHost:
     def listing(self) -> list[dict[str, Any]]:
         """Name, origin, hooks and problem of each plugin, in the order of their names."""
         found = []
-        for name, origin in sorted(self._origin.items()):
+        for name in sorted({*self._origin, *(p.plugin for p in self.problems)}):
             plugin = self._manager.get_plugin(name)
             callers = self._manager.get_hookcallers(plugin) if plugin is not None else None
             problems = [f"{p.moment}: {p.message}" for p in self.problems if p.plugin == name]
@@ -135,7 +167,7 @@ class PluginHost:
             found.append(
                 {
                     "name": name,
-                    "origin": origin,
+                    "origin": self._origin.get(name, ""),
                     "summary": summary,
                     "hooks": sorted(c.name for c in callers or []),
                     "problem": "; ".join(problems) or None,
@@ -147,69 +179,78 @@ class PluginHost:
 
     def databases(self) -> list[Path]:
         """All database files, those that ship first."""
-        return [Path(p) for found in self._call("register_databases", _paths) for p in found]
+        return [path for _, path in self.databases_by_plugin()]
+
+    def databases_by_plugin(self) -> list[tuple[str, Path]]:
+        """Names of plugins with each database file they add, those that ship first."""
+        called = self._call("register_databases", checked.paths)
+        return [(name, path) for name, found in called for path in found]
 
     def contexts(self) -> list[Context]:
         """All contexts."""
-        return [c for found in self._call("register_contexts", _contexts) for c in found]
+        return self._gather("register_contexts", checked.contexts)
 
     def backscatter_models(self) -> list[BackscatterModel]:
         """All extra models."""
-        return [m for found in self._call("register_backscatter_models", list) for m in found]
+        return self._gather("register_backscatter_models", checked.models)
 
     def coexistence(self) -> list[Coexistence]:
         """All coexistence rules."""
-        return [r for found in self._call("register_coexistence", _rules) for r in found]
+        return self._gather("register_coexistence", checked.rules)
 
     def possible(self, situation: Situation) -> NDArray[np.bool_]:
-        """Which phases no plugin excludes."""
+        """Which phases no plugin excludes, shape (P,)."""
         import numpy as np
 
         count = len(situation.phases)
         possible = np.ones(count, dtype=bool)
-        for found in self._call("filter_candidates", _mask(count), situation=situation):
+        for _, found in self._call("filter_candidates", checked.mask(count), situation=situation):
             possible &= found
         return possible
 
     def factors(self, situation: Situation) -> NDArray[np.float64]:
-        """Product of all plugins' factors."""
+        """Product of all plugins' factors, shape (P,)."""
         import numpy as np
 
         count = len(situation.phases)
         factors = np.ones(count)
-        for found in self._call("weigh_candidates", _factors(count), situation=situation):
+        for _, found in self._call("weigh_candidates", checked.factors(count), situation=situation):
             factors *= found
         return factors
 
-    def evidence(self, situation: Situation, image: Mapping[str, Any]) -> dict[str, float]:
-        """Product of all plugins' evidence factors, by phase name."""
-        factors: dict[str, float] = {}
-        found_all = self._call("gather_evidence", _named, situation=situation, image=image)
-        for found in found_all:
+    def evidence(
+        self, situation: Situation, image: Mapping[str, Any]
+    ) -> dict[str, NDArray[np.float64]]:
+        """Product of all plugins' evidence factors by phase name, one for each cluster."""
+        check = checked.evidence(len(situation.clusters))
+        factors: dict[str, NDArray[np.float64]] = {}
+        for _, found in self._call("gather_evidence", check, situation=situation, image=image):
             for name, factor in found.items():
                 factors[name] = factors.get(name, 1.0) * factor
         return factors
 
     def report_sections(self, document: Mapping[str, Any]) -> list[ReportSection]:
         """All sections plugins add to a report."""
-        return [
-            s
-            for found in self._call("report_sections", _sections, document=document)
-            for s in found
-        ]
+        return self._gather("report_sections", checked.sections, document=document)
 
-    def _call(self, hook: str, check: Any, **arguments: Any) -> list[Any]:
+    def _gather(self, hook: str, check: Callable[[Any], list[T]], **arguments: Any) -> list[T]:
+        return [item for _, found in self._call(hook, check, **arguments) for item in found]
+
+    def _call(self, hook: str, check: Callable[[Any], T], **arguments: Any) -> list[tuple[str, T]]:
         """Call every implementation on its own; what one gives is checked before it is used."""
-        caller = getattr(self._manager.hook, hook)
         results = []
-        for implementation in sorted(caller.get_hookimpls(), key=lambda i: i.plugin_name):
-            given = {k: v for k, v in arguments.items() if k in implementation.argnames}
+        implementations = getattr(self._manager.hook, hook).get_hookimpls()
+        # Those that ship first, then by name: the order of loading must not matter.
+        for one in sorted(
+            implementations, key=lambda i: (self._origin[i.plugin_name] != SHIPS, i.plugin_name)
+        ):
+            given = {name: arguments[name] for name in one.argnames}
             try:
-                found = implementation.function(**given)
+                found = one.function(**given)
                 if found is not None:
-                    results.append(check(found))
-            except Exception as error:
-                self._problem(implementation.plugin_name, hook, _said(error))
+                    results.append((one.plugin_name, check(found)))
+            except FAILURES as error:
+                self._problem(one.plugin_name, hook, _said(error))
         return results
 
 
@@ -218,6 +259,7 @@ def make_host(
     built_in: Sequence[str] = BUILT_IN,
     entry_points: bool = True,
     folders: Iterable[Path] | None = None,
+    extra: Mapping[str, object] | None = None,
     blocked: Iterable[str] | None = None,
 ) -> PluginHost:
     """Load plugins.
@@ -229,7 +271,9 @@ def make_host(
     entry_points : bool
         Whether installed distributions of the entry-point group "phaseid" are loaded.
     folders : iterable of Path, optional
-        Folders of plain ``.py`` files; None takes `default_folders`.
+        Folders of plain ``.py`` files, or such files; None takes `default_folders`.
+    extra : mapping of str to object, optional
+        Plugin objects or modules at hand, by name.
     blocked : iterable of str, optional
         Names to leave out; None takes PHASEID_BLOCK (separated by commas).
 
@@ -243,22 +287,38 @@ def make_host(
     host = PluginHost()
     for module in built_in:
         if module not in left_out:
-            host.add_module(module, "ships with phaseid")
+            host.add_module(module, SHIPS)
+    for name, plugin in (extra or {}).items():
+        if name not in left_out:
+            host.add(plugin, name, "given by the caller")
     if entry_points:
         _add_entry_points(host, left_out)
     for folder in default_folders() if folders is None else folders:
-        for path in sorted(Path(folder).glob("*.py")):
-            if not path.name.startswith("_") and f"file {path.stem}" not in left_out:
-                host.add_file(path)
+        _add_folder(host, Path(folder), left_out)
     return host
 
 
 def default_folders() -> list[Path]:
-    """PHASEID_PLUGINS (separated like a search path) and the user's configuration folder."""
+    """PHASEID_PLUGINS (separated like a search path) and the user's configuration folder, if it is there."""
     import platformdirs
 
     told = [Path(p) for p in os.environ.get("PHASEID_PLUGINS", "").split(os.pathsep) if p]
-    return [*told, platformdirs.user_config_path("phaseid") / "plugins"]
+    own = platformdirs.user_config_path("phaseid") / "plugins"
+    return [*told, own] if own.is_dir() else told
+
+
+def _add_folder(host: PluginHost, folder: Path, left_out: set[str]) -> None:
+    if not folder.exists():
+        host.report(str(folder), "loading", "there is no such plugin folder; mend PHASEID_PLUGINS")
+        return
+    try:
+        files = sorted(folder.glob("*.py")) if folder.is_dir() else [folder]
+    except OSError as error:
+        host.report(str(folder), "loading", _said(error))
+        return
+    for path in files:
+        if not path.name.startswith("_") and f"file {path.stem}" not in left_out:
+            host.add_file(path)
 
 
 def _add_entry_points(host: PluginHost, left_out: set[str]) -> None:
@@ -270,8 +330,8 @@ def _add_entry_points(host: PluginHost, left_out: set[str]) -> None:
         distribution = point.dist.name if point.dist is not None else "unknown"
         try:
             plugin = point.load()
-        except Exception as error:
-            host._failed(point.name, f"installed with {distribution}", error)
+        except FAILURES as error:
+            host.failed(point.name, f"installed with {distribution}", error)
             continue
         host.add(plugin, point.name, f"installed with {distribution}")
 
@@ -279,67 +339,3 @@ def _add_entry_points(host: PluginHost, left_out: set[str]) -> None:
 def _said(error: BaseException) -> str:
     text = " ".join(str(error).split()) or "no message"
     return f"{type(error).__name__}: {text[:300]}"
-
-
-# --- what a hook gives back is checked, so that the plugin is named and not the code that trusts it ---
-
-
-def _paths(found: Any) -> list[Path]:
-    return [Path(p) for p in found]
-
-
-def _contexts(found: Any) -> list[Any]:
-    from phaseid.phases.contexts import Context
-
-    return [_typed(item, Context) for item in found]
-
-
-def _rules(found: Any) -> list[Any]:
-    from phaseid.phases.contexts import Coexistence
-
-    return [_typed(item, Coexistence) for item in found]
-
-
-def _sections(found: Any) -> list[Any]:
-    from phaseid.hooks.specs import ReportSection
-
-    return [_typed(item, ReportSection) for item in found]
-
-
-def _typed(item: Any, kind: type[Any]) -> Any:
-    if not isinstance(item, kind):
-        raise TypeError(f"gave a {type(item).__name__} instead of a {kind.__name__}")
-    return item
-
-
-def _mask(count: int) -> Any:
-    def check(found: Any) -> Any:
-        import numpy as np
-
-        mask = np.asarray(found)
-        if mask.shape != (count,) or mask.dtype != bool:
-            raise ValueError(
-                f"gave {mask.dtype} of shape {mask.shape} instead of bool of ({count},)"
-            )
-        return mask
-
-    return check
-
-
-def _factors(count: int) -> Any:
-    def check(found: Any) -> Any:
-        import numpy as np
-
-        factors = np.asarray(found, dtype=float)
-        if factors.shape != (count,) or not np.isfinite(factors).all() or (factors < 0).any():
-            raise ValueError(f"gave no {count} finite factors of zero or more")
-        return factors
-
-    return check
-
-
-def _named(found: Any) -> dict[str, float]:
-    factors = {str(name): float(factor) for name, factor in dict(found).items()}
-    if any(not 0 <= f < float("inf") for f in factors.values()):
-        raise ValueError("gave a factor that is not finite and zero or more")
-    return factors

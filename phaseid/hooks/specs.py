@@ -20,8 +20,32 @@ if TYPE_CHECKING:
 
 
 @dataclass(frozen=True)
+class ClusterSummary:
+    """One cluster of grey of an image.
+
+    Attributes
+    ----------
+    grey_mean, grey_se, grey_sd : float
+        Mean, its standard error, and the spread of the pixels; raw grey of the image.
+    area_fraction : float
+    pixels, regions : int
+        Pixels in all, and connected regions.
+    clipped : {"low", "high"} or None
+        At which end of the range the grey is cut off.
+    """
+
+    grey_mean: float
+    grey_se: float
+    grey_sd: float
+    area_fraction: float
+    pixels: int
+    regions: int
+    clipped: str | None = None
+
+
+@dataclass(frozen=True)
 class Situation:
-    """What a hook may look at. Fields are only ever added.
+    """What a hook may look at, and not change. Fields are only ever added.
 
     Attributes
     ----------
@@ -31,6 +55,9 @@ class Situation:
     phases : tuple of Phase
         P candidates; arrays that hooks give back follow this order.
     mean_atomic_number, eta, signal : ndarray of shape (P,)
+        Read-only.
+    clusters : tuple of ClusterSummary
+        Clusters of the image, ascending in grey, where the hook is called for one image; else empty.
     """
 
     conditions: Conditions
@@ -39,6 +66,14 @@ class Situation:
     mean_atomic_number: NDArray[np.float64]
     eta: NDArray[np.float64]
     signal: NDArray[np.float64]
+    clusters: tuple[ClusterSummary, ...] = ()
+
+    def __post_init__(self) -> None:
+        # A plugin that writes into an array would change the answers of all the others.
+        for name in ("mean_atomic_number", "eta", "signal"):
+            view = getattr(self, name).view()
+            view.flags.writeable = False
+            object.__setattr__(self, name, view)
 
 
 @dataclass(frozen=True)
@@ -53,7 +88,8 @@ class ReportSection:
 def register_databases() -> Sequence[Path] | None:
     """Paths of database files to add.
 
-    Called once, when the databases are loaded. None or nothing adds none. Since 0.1.
+    Called once, when the databases are loaded. A phase of the same name as one that ships replaces it;
+    a faulty file is named and left out. None adds none. Since 0.1.
     """
 
 
@@ -61,8 +97,8 @@ def register_databases() -> Sequence[Path] | None:
 def register_contexts() -> Sequence[Context] | None:
     """Contexts to add to the tree.
 
-    Called once, when the contexts are loaded. A path that an earlier plugin (by name) defines stays as
-    it is. None adds none. Since 0.1.
+    Called once, when the contexts are loaded. A path that ships, or that a plugin earlier in the
+    alphabet defines, stays as it is. None adds none. Since 0.1.
     """
 
 
@@ -96,17 +132,21 @@ def weigh_candidates(situation: Situation) -> NDArray[np.float64] | None:
 def register_coexistence() -> Sequence[Coexistence] | None:
     """Phases that do not occur together.
 
-    Called once, when the databases are loaded. Names that no database has are passed over. None adds
+    Called for every ranking; a rule holds in the contexts it names. Names that no database has are passed over. None adds
     none. Since 0.1.
     """
 
 
 @hookspec
-def gather_evidence(situation: Situation, image: Mapping[str, Any]) -> Mapping[str, float] | None:
+def gather_evidence(
+    situation: Situation, image: Mapping[str, Any]
+) -> Mapping[str, float | Sequence[float]] | None:
     """Extra evidence about an image: phase names and likelihood factors.
 
-    Called for every image of a ranking; `image` holds ``path``, ``sha256`` and the metadata that were
-    found. The factors act on all its clusters. None adds none. Since 0.1.
+    Called for every image of a ranking; `image` holds ``path``, ``sha256``, ``energy_keV`` and
+    ``tilt_deg``, `situation.clusters` its clusters that take part. A single factor acts on all
+    clusters, a sequence holds one for each. The factors of all plugins multiply; names that no database
+    has are passed over. None adds none. Since 0.1.
     """
 
 

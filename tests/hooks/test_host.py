@@ -2,8 +2,9 @@
 
 from __future__ import annotations
 
-import importlib
 import inspect
+import sys
+from dataclasses import replace
 from pathlib import Path
 from types import SimpleNamespace
 
@@ -11,12 +12,13 @@ import numpy as np
 import pytest
 
 from phaseid.hooks import hookimpl, specs
-from phaseid.hooks.host import BUILT_IN, make_host
-from phaseid.hooks.specs import ReportSection, Situation
+from phaseid.hooks.host import default_folders, make_host
+from phaseid.hooks.specs import ClusterSummary, ReportSection, Situation
+from phaseid.hooks.testing import hook_names, host_of, plugin_of
 from phaseid.phases.contexts import Coexistence, Context
 from phaseid.phases.records import Phase
 from phaseid.physics.conditions import Conditions
-from phaseid.physics.elemental import BackscatterModel, elemental_eta
+from phaseid.physics.elemental import BackscatterModel, elemental_eta, models
 
 ROOT = Path(__file__).resolve().parents[2]
 PHASES = (Phase("A", "FeO", "from memory"), Phase("B", "MgO", "from memory"))
@@ -28,19 +30,10 @@ SITUATION = Situation(
     np.array([0.2, 0.1]),
     np.array([0.1, 0.05]),
 )
-HOOKS = [n for n, f in vars(specs).items() if inspect.isfunction(f) and hasattr(f, "phaseid_spec")]
+HOOKS = hook_names()
 
 
-def plugin(**functions):
-    """A plugin object with the given hook implementations."""
-    return SimpleNamespace(**{name: hookimpl(f) for name, f in functions.items()})
-
-
-def host(*plugins):
-    made = make_host(built_in=(), entry_points=False, folders=[])
-    for n, one in enumerate(plugins):
-        made.add(one, f"plugin {n}", "a test")
-    return made
+plugin, host = plugin_of, host_of
 
 
 def test_register_databases():
@@ -76,10 +69,16 @@ def test_weigh_candidates_multiply_whatever_the_order():
     assert host(second, first).factors(SITUATION).tolist() == [6.0, 0.5]
 
 
-def test_gather_evidence():
+def test_gather_evidence_for_all_clusters_or_each():
+    clusters = tuple(ClusterSummary(g, 0.1, 2.0, 0.5, 100, 3) for g in (50.0, 90.0))
+    situation = replace(SITUATION, clusters=clusters)
     one = plugin(gather_evidence=lambda situation, image: {"A": 2.0} if image["path"] else {})
-    two = plugin(gather_evidence=lambda image: {"A": 2.0})
-    assert host(one, two).evidence(SITUATION, {"path": "x"}) == {"A": 4.0}
+    two = plugin(gather_evidence=lambda image: {"A": 2.0, "B": [1.0, 0.5]})
+    found = host(one, two).evidence(situation, {"path": "x"})
+    assert {name: factors.tolist() for name, factors in found.items()} == {
+        "A": [4.0, 4.0],
+        "B": [1.0, 0.5],
+    }
 
 
 def test_report_sections():
@@ -109,6 +108,16 @@ def test_eight_hooks_are_specified():
         ({"filter_candidates": lambda situation: [0.5, 1]}, lambda h: h.possible(SITUATION)),
         ({"report_sections": lambda document: [3]}, lambda h: h.report_sections({})),
         ({"gather_evidence": lambda image: {"A": "x"}}, lambda h: h.evidence(SITUATION, {})),
+        ({"gather_evidence": lambda image: {"A": [1.0] * 5}}, lambda h: h.evidence(SITUATION, {})),
+        ({"register_contexts": lambda: sys.exit(3)}, lambda h: h.contexts()),
+        ({"register_databases": lambda: "lab.yaml"}, lambda h: h.databases()),
+        ({"register_backscatter_models": lambda: [3]}, lambda h: h.backscatter_models()),
+        ({"register_backscatter_models": lambda: models()}, lambda h: h.backscatter_models()),
+        (
+            {"register_coexistence": lambda: [Coexistence("A", "B", 0.1, "")]},
+            lambda h: h.coexistence(),
+        ),
+        ({"register_contexts": lambda: [Context("Steel works", "x")]}, lambda h: h.contexts()),
     ],
 )
 def test_failing_hook_is_named_and_the_others_still_count(broken, call):
@@ -162,35 +171,94 @@ def test_blocked_plugins_are_left_out(monkeypatch):
     assert "steel" in paths
 
 
-@pytest.mark.parametrize("module", BUILT_IN)
-def test_built_in_plugins_are_ordinary_and_documented(module):
-    loaded = importlib.import_module(module)
-    assert loaded.__doc__
-    contexts = getattr(loaded, "CONTEXTS", ())
-    assert all(c.title and c.description for c in contexts)
-    for rule in getattr(loaded, "COEXISTENCE", ()):
-        assert 0 < rule.factor < 1
-        assert len(rule.reason) > 20
+def test_files_with_dataclasses_and_doubled_names_and_missing_folders(tmp_path):
+    first, second = tmp_path / "first", tmp_path / "second"
+    for folder in (first, second):
+        folder.mkdir()
+        (folder / "lab.py").write_text(
+            "from __future__ import annotations\n"
+            "from dataclasses import dataclass\n"
+            "from phaseid.hooks import hookimpl\n"
+            "from phaseid.phases.contexts import Context\n"
+            "@dataclass\n"
+            "class Kind:\n"
+            "    path: str\n"
+            "@hookimpl\n"
+            "def register_contexts():\n"
+            f"    return [Context(Kind({folder.name!r}).path, 'Title')]\n",
+            encoding="utf-8",
+        )
+    made = make_host(built_in=(), entry_points=False, folders=[first, second, tmp_path / "none"])
+    assert [c.path for c in made.contexts()] == ["first"]
+    told = {p.plugin: p.message for p in made.problems}
+    assert str(second / "lab.py") in told["file lab"]
+    assert "no such plugin folder" in told[str(tmp_path / "none")]
+    assert {e["name"] for e in made.listing()} == set(told)
 
 
-def test_what_ships_loads_without_a_problem_and_is_complete():
-    made = make_host(entry_points=False, folders=[])
-    assert made.problems == []
-    assert len(made.contexts()) >= 60
-    assert len(made.coexistence()) >= 8
-    assert len(made.databases()) >= 8
+def test_environment_names_folders_and_files(tmp_path, monkeypatch):
+    file = tmp_path / "one.py"
+    file.write_text('"""Does nothing."""\n', encoding="utf-8")
+    monkeypatch.setenv("PHASEID_PLUGINS", str(file))
+    assert default_folders() == [file]
+    made = make_host(built_in=(), entry_points=False)
+    assert [e["name"] for e in made.listing()] == ["file one"]
 
 
-def test_practice_favours_its_own_oxides():
-    from phaseid_plugins.steel import practice_factors
+def test_entry_points_are_loaded_and_a_broken_one_is_named(monkeypatch):
+    class Point:
+        dist = SimpleNamespace(name="lab-package")
 
-    phases = (
-        Phase("Alumina", "Al2O3", "x", contexts={"steel": "common"}),
-        Phase("Silica", "SiO2", "x", contexts={"steel": "common"}),
-        Phase("Kyanite", "Al2SiO5", "x", contexts={"rock": "common"}),
+        def __init__(self, name, load):
+            self.name, self.load = name, load
+
+    points = [
+        Point("good", lambda: plugin(register_contexts=lambda: [Context("lab", "Lab")])),
+        Point("bad", lambda: 1 / 0),
+        Point("blocked", lambda: 1 / 0),
+    ]
+    monkeypatch.setattr("importlib.metadata.entry_points", lambda group: points)
+    made = make_host(built_in=(), folders=[], blocked=["blocked"])
+    assert [c.path for c in made.contexts()] == ["lab"]
+    listing = {e["name"]: e for e in made.listing()}
+    assert listing["good"]["origin"] == "installed with lab-package"
+    assert "ZeroDivisionError" in listing["bad"]["problem"]
+    assert "blocked" not in listing
+
+
+def test_wrappers_and_wrong_arguments_are_refused_at_once():
+    def around():
+        yield
+
+    def wants_more(situation, colour):
+        return None
+
+    wrapper = SimpleNamespace(register_contexts=hookimpl(wrapper=True)(around))
+    made = host(wrapper, plugin(weigh_candidates=wants_more))
+    told = {p.plugin: p.message for p in made.problems}
+    assert "wrapper" in told["plugin 0"]
+    assert "colour" in told["plugin 1"]
+    assert made.contexts() == []
+    assert made.factors(SITUATION).tolist() == [1.0, 1.0]
+
+
+def test_what_ships_comes_first_whatever_it_is_called():
+    made = make_host(
+        built_in=("phaseid_plugins.databases",),
+        entry_points=False,
+        folders=[],
+        extra={"a": plugin(register_databases=lambda: ["lab.yaml"])},
     )
-    situation = Situation(
-        Conditions(), ("steel/aluminium-killed",), phases, *(np.zeros(3) for _ in range(3))
-    )
-    assert practice_factors(situation).tolist() == [2.0, 1.0, 1.0]
-    assert practice_factors(Situation(Conditions(), (), phases, *(np.zeros(3),) * 3)) is None
+    assert made.databases()[-1] == Path("lab.yaml")
+    assert made.databases_by_plugin()[-1] == ("a", Path("lab.yaml"))
+    assert len(made.databases()) > 8
+
+
+def test_a_plugin_cannot_change_what_others_see():
+    def scribble(situation):
+        situation.signal[:] = 0.0
+
+    made = host(plugin(weigh_candidates=scribble))
+    made.factors(SITUATION)
+    assert "read-only" in made.problems[0].message
+    assert SITUATION.signal[0] == 0.1
