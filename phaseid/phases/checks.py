@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import re
 from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import Literal
@@ -11,6 +10,7 @@ import numpy as np
 
 from phaseid.phases.catalogue import fold
 from phaseid.phases.contexts import ContextTree
+from phaseid.phases.hazards import reasons
 from phaseid.phases.mixture import is_mixture
 from phaseid.phases.oxidation import TOLERANCE, imbalance
 from phaseid.phases.records import Phase
@@ -21,21 +21,12 @@ _AVOGADRO_A3 = 0.602214076  # atoms per (g/mol) per cm3 to per cubic angstrom
 # are mostly oxygen lie closer together. Bounds with room, from memory.
 _VOLUMES = {"oxygen": (6.5, 30.0), "other": (5.0, 60.0)}
 _HYDROGEN, _OXYGEN = SYMBOLS.index("H"), SYMBOLS.index("O")
-
-_TOXIC = ("Be", "Pb", "As", "Hg", "Cd", "Tl", "U", "Th", "Ra", "Pu", "Np", "Am")
-_ASBESTOS = (
-    "chrysotile",
-    "crocidolite",
-    "amosite",
-    "tremolite",
-    "actinolite",
-    "anthophyllite",
-    "riebeckite",
-    "grunerite",
-    "erionite",
-)
-# Below this mass fraction an element is a trace that calls for no word of its own.
-_TRACE = 0.002
+# Densities apart by more than this are those of different structures.
+_SAME_DENSITY = 0.015
+# Fewer phases teach no volumes; an element in fewer is predicted by nothing but itself.
+_ENOUGH, _OFTEN = 200, 8
+_ODD = 1.35
+_CAUTION = ("local", "licensed", "rules", "regulation")
 
 
 @dataclass(frozen=True)
@@ -77,12 +68,17 @@ def check(phases: Sequence[Phase], contexts: ContextTree) -> list[Finding]:
         found += _contexts(phase, contexts)
     found += _names(phases)
     found += _compositions(phases)
+    found += odd_densities(phases)
     found += _unreached(phases, contexts)
     return sorted(found, key=lambda f: f.kind)
 
 
 def _fault(phase: Phase, message: str) -> Finding:
     return Finding("fault", phase.name, phase.location, message)
+
+
+def _remark(phase: Phase, message: str) -> Finding:
+    return Finding("remark", phase.name, phase.location, message)
 
 
 def _chemistry(phase: Phase) -> list[Finding]:
@@ -130,35 +126,28 @@ def _density(
 
 
 def _hazard(phase: Phase) -> list[Finding]:
-    if phase.hazard:
-        return []
-    rows, _ = phase.parsed.variants(5)
-    present = rows.max(axis=0)
-    for symbol in _TOXIC:
-        if present[SYMBOLS.index(symbol)] > _TRACE:
-            return [
-                _fault(phase, f"holds {symbol} but has no hazard; add one sentence of caution.")
-            ]
-    words = set(re.findall(r"\w+", " ".join(phase.names).casefold()))
-    for fibre in _ASBESTOS:
-        if fibre in words:
-            return [_fault(phase, f"{fibre} can be fibrous but has no hazard; add one sentence.")]
-    if phase.crystal_system not in (None, "amorphous") and fold(phase.formula) == "sio2":
-        return [
-            _fault(phase, "is crystalline silica but has no hazard; add one sentence of caution.")
-        ]
-    nickel, sulphur = (present[SYMBOLS.index(s)] > 0.05 for s in ("Ni", "S"))
-    if nickel and sulphur and present[_OXYGEN] == 0:
-        return [
-            _fault(phase, "is a nickel sulphide but has no hazard; add one sentence of caution.")
-        ]
-    return []
+    why = reasons(phase, phase.parsed.variants(5)[0])
+    if not phase.hazard:
+        return [_fault(phase, f"{why[0][0]} but has no hazard; add one sentence.")] if why else []
+    said = phase.hazard.casefold()
+    found = [
+        _remark(phase, f"{reason}, which its hazard does not name; add it.")
+        for reason, words in why
+        if not any(w in said for w in words)
+    ]
+    if not any(w in said for w in _CAUTION):
+        found.append(_remark(phase, "its hazard does not defer to local rules; add that."))
+    return found
 
 
 def _contexts(phase: Phase, contexts: ContextTree) -> list[Finding]:
     known = set(contexts.paths)
+    unreached = " and no other, so nothing reaches it" if not known & set(phase.contexts) else ""
     return [
-        _fault(phase, f"names the context {path!r}, which nobody defines; correct it or define it.")
+        _fault(
+            phase,
+            f"names the context {path!r}, which nobody defines{unreached}; correct it or define it.",
+        )
         for path in phase.contexts
         if path not in known
     ]
@@ -173,34 +162,71 @@ def _names(phases: Sequence[Phase]) -> list[Finding]:
             found.append(_fault(phase, f"{phase.name!r} is also in {first.location}; rename one."))
     for phase in phases:
         for name in phase.other_names:
-            other = owner.get(fold(name))
-            if other is not None and other is not phase:
+            other = owner.setdefault(fold(name), phase)
+            if other is not phase:
                 found.append(
                     _fault(
                         phase,
-                        f"its other name {name!r} is the name of a phase in {other.location}; remove it.",
+                        f"its other name {name!r} belongs to {other.name} in {other.location}; remove "
+                        "one, or nobody knows which is meant.",
                     )
                 )
     return found
 
 
 def _compositions(phases: Sequence[Phase]) -> list[Finding]:
-    seen: dict[tuple[str, str | None], Phase] = {}
+    """Phases with the same compositions and crystal system that not even density tells apart."""
+    seen: dict[tuple[bytes, str | None], list[Phase]] = {}
     found = []
     for phase in phases:
-        key = (fold(phase.formula), phase.crystal_system)
-        first = seen.setdefault(key, phase)
-        if first is not phase and phase.ranges == first.ranges:
+        ends = phase.parsed.extremes()
+        key = np.concatenate([ends.min(axis=0), ends.max(axis=0)]).round(3) + 0.0
+        same = seen.setdefault((key.tobytes(), phase.crystal_system), [])
+        first = next((p for p in same if _one_density(p, phase)), None)
+        same.append(phase)
+        if first is not None:
             found.append(
-                Finding(
-                    "remark",
-                    phase.name,
-                    phase.location,
-                    f"has the formula and crystal system of {first.name} ({first.location}); keep both "
-                    "only if they are met in different contexts.",
+                _remark(
+                    phase,
+                    f"has the composition, crystal system and density of {first.name} "
+                    f"({first.location}); keep both only if they are met in different contexts.",
                 )
             )
     return found
+
+
+def _one_density(first: Phase, second: Phase) -> bool:
+    if first.density is None or second.density is None:
+        return True
+    return abs(first.density / second.density - 1) < _SAME_DENSITY
+
+
+def odd_densities(phases: Sequence[Phase]) -> list[Finding]:
+    """Densities far from those of like phases.
+
+    Volumes of the elements that best add up to the molar volumes of all given phases (least squares,
+    non-negative) predict each density; a phase more than a factor `_ODD` off is a place to look.
+    """
+    known = [p for p in phases if p.density is not None]
+    if len(known) < _ENOUGH:
+        return []
+    from scipy.optimize import nnls
+
+    density = np.array([p.density for p in known], dtype=float)
+    rows = np.stack([p.parsed.mass_fractions() for p in known]) / atomic_masses()
+    # Weighted by density, so that the error is relative.
+    volumes, _ = nnls(rows * density[:, None], np.ones(len(known)))
+    ratio = rows @ volumes * density
+    common = (rows > 0).sum(axis=0) >= _OFTEN
+    usual = ~np.any((rows > 0) & ~common, axis=1)
+    return [
+        _remark(
+            known[i],
+            f"a density of {density[i]:g} g/cm3 is far from {density[i] / ratio[i]:.2f}, which the other "
+            "phases let expect; check it.",
+        )
+        for i in np.flatnonzero(usual & (np.abs(np.log(ratio)) > np.log(_ODD)))
+    ]
 
 
 def _unreached(phases: Sequence[Phase], contexts: ContextTree) -> list[Finding]:
