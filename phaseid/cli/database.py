@@ -193,7 +193,8 @@ def check(files: tuple[Path, ...], as_json: bool, remarks: bool) -> int:
 )
 @click.option("--replace", "overwrite", is_flag=True, help="Replace FILE.yaml if it exists.")
 def import_phases(sheet: Path, target: Path | None, overwrite: bool) -> int:
-    from phaseid.phases.importing import preview, read_sheet, write_database
+    from phaseid.phases.importing import preview, read_sheet
+    from phaseid.phases.writing import write_database
     from phaseid.report.phases import preview_table
     from phaseid.session.knowledge import Knowledge
 
@@ -201,6 +202,8 @@ def import_phases(sheet: Path, target: Path | None, overwrite: bool) -> int:
     name = target.stem if target is not None else sheet.stem
     found = preview(read_sheet(sheet), knowledge.catalogue, knowledge.contexts, name)
     console().print(preview_table(found))
+    for doubt in found.doubts:
+        click.echo(f"check: {doubt}", err=True)
     if found.refused:
         raise InputError(
             f"{len(found.refused)} rows of {sheet} were refused; nothing was written: mend them first."
@@ -250,14 +253,11 @@ def add(
     note: str,
     source: str,
 ) -> int:
-    from phaseid.phases.database import load
-    from phaseid.phases.importing import preview, write_database
+    from phaseid.phases.importing import preview
+    from phaseid.phases.writing import append_phase
     from phaseid.session.knowledge import Knowledge
 
     knowledge = Knowledge.load()
-    present = load(target).phases if target.exists() else ()
-    if any(p.name.casefold() == name.casefold() for p in present):
-        raise InputError(f"{target} already has a phase {name!r}; edit the file to change it.")
     row = {
         "name": name,
         "formula": formula,
@@ -274,6 +274,8 @@ def add(
     )
     if found.refused:
         raise InputError(f"{name}: {found.refused[0].reason}; nothing was written.")
-    write_database(target, target.stem, [*present, *found.phases])
-    click.echo(f"wrote {target}: {len(present) + 1} phases")
+    count = append_phase(target, found.phases[0])
+    for doubt in found.doubts:
+        click.echo(f"check: {doubt}", err=True)
+    click.echo(f"wrote {target}: {count} phases")
     return 0

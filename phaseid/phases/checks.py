@@ -61,16 +61,32 @@ def check(phases: Sequence[Phase], contexts: ContextTree) -> list[Finding]:
     list of Finding
         Faults first.
     """
-    found: list[Finding] = []
-    for phase in phases:
-        found += _chemistry(phase)
-        found += _hazard(phase)
-        found += _contexts(phase, contexts)
+    found = check_entries(phases, contexts)
     found += _names(phases)
     found += _compositions(phases)
     found += odd_densities(phases)
     found += _unreached(phases, contexts)
     return sorted(found, key=lambda f: f.kind)
+
+
+def check_entries(phases: Sequence[Phase], contexts: ContextTree) -> list[Finding]:
+    """Check phases one by one: chemistry, density, hazard, contexts.
+
+    Parameters
+    ----------
+    phases : sequence of Phase
+    contexts : ContextTree
+
+    Returns
+    -------
+    list of Finding
+    """
+    found: list[Finding] = []
+    for phase in phases:
+        found += _chemistry(phase)
+        found += _hazard(phase)
+        found += _contexts(phase, contexts)
+    return found
 
 
 def _fault(phase: Phase, message: str) -> Finding:

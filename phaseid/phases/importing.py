@@ -7,13 +7,11 @@ import io
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from pathlib import Path
-from typing import Any
 
 from phaseid.errors import InputError
-from phaseid.files import write_text
-from phaseid.phases.catalogue import Catalogue
+from phaseid.phases.catalogue import Catalogue, fold
+from phaseid.phases.checks import check_entries
 from phaseid.phases.contexts import ContextTree
-from phaseid.phases.database import SCHEMA
 from phaseid.phases.formula import parse
 from phaseid.phases.records import ABUNDANCE, CRYSTAL_SYSTEMS, Phase
 
@@ -32,6 +30,8 @@ HEADINGS: Mapping[str, tuple[str, ...]] = {
 }
 DEFAULT_CONTEXT = "preparation"
 MOST_ROWS = 20_000
+MOST_COLUMNS = 60
+LARGEST_BYTES = 20_000_000
 
 
 @dataclass(frozen=True)
@@ -54,11 +54,15 @@ class Preview:
     refused : tuple of Refused
     replaces : tuple of str
         Names that are already in the catalogue; the new entries would take their place.
+    doubts : tuple of str
+        What the checks find in the clean rows: charges, densities, missing hazards; to look at, but
+        no reason to refuse.
     """
 
     phases: tuple[Phase, ...]
     refused: tuple[Refused, ...]
     replaces: tuple[str, ...]
+    doubts: tuple[str, ...] = ()
 
 
 def read_sheet(path: Path) -> list[dict[str, str]]:
@@ -117,58 +121,18 @@ def preview(
             continue
         try:
             phase = _phase(row, contexts, database)
-            if phase.name.casefold() in names:
+            if fold(phase.name) in names:
                 raise InputError("the name stands twice in the sheet; rename one")
         except InputError as error:
             refused.append(Refused(number, row.get("name", ""), str(error).rstrip(".")))
             continue
-        names.add(phase.name.casefold())
+        names.add(fold(phase.name))
         phases.append(phase)
         position = catalogue.index(phase.name)
-        if position is not None and catalogue.phases[position].name.casefold() in names:
+        if position is not None and fold(catalogue.phases[position].name) == fold(phase.name):
             replaces.append(phase.name)
-    return Preview(tuple(phases), tuple(refused), tuple(replaces))
-
-
-def write_database(path: Path, name: str, phases: Sequence[Phase]) -> None:
-    """Write a database file in one step.
-
-    Raises
-    ------
-    InputError
-        If it cannot be written.
-    """
-    write_text(path, to_yaml(name, phases))
-
-
-def to_yaml(name: str, phases: Sequence[Phase]) -> str:
-    """Text of a database file."""
-    import yaml
-
-    entries = []
-    for phase in phases:
-        entry: dict[str, Any] = {"name": phase.name}
-        if phase.other_names:
-            entry["other_names"] = list(phase.other_names)
-        entry["formula"] = phase.formula
-        if phase.ranges:
-            entry["ranges"] = {k: [float(a), float(b)] for k, (a, b) in phase.ranges.items()}
-        if phase.density_range:
-            low, high = phase.density_range
-            entry["density"] = low if low == high else [low, high]
-        if phase.crystal_system:
-            entry["crystal_system"] = phase.crystal_system
-        entry["contexts"] = dict(phase.contexts)
-        for key in ("note", "hazard"):
-            if getattr(phase, key):
-                entry[key] = getattr(phase, key)
-        entry["source"] = phase.source
-        entries.append(entry)
-    data = {"schema": SCHEMA, "name": name, "title": name, "licence": "private", "phases": entries}
-    # Aliases are refused when the file is read, so equal values must be written out each time.
-    dumper = type("Plain", (yaml.SafeDumper,), {"ignore_aliases": lambda self, data: True})
-    text: str = yaml.dump(data, Dumper=dumper, sort_keys=False, allow_unicode=True, width=100)
-    return text
+    doubts = [f"{f.phase}: {f.message}" for f in check_entries(phases, contexts)]
+    return Preview(tuple(phases), tuple(refused), tuple(replaces), tuple(doubts))
 
 
 def _phase(row: Mapping[str, str], contexts: ContextTree, database: str) -> Phase:
@@ -247,6 +211,7 @@ def _heading(cell: str) -> str:
 
 
 def _csv(path: Path) -> list[list[str]]:
+    _not_too_large(path)
     try:
         text = path.read_text(encoding="utf-8-sig")
     except UnicodeDecodeError:
@@ -257,7 +222,15 @@ def _csv(path: Path) -> list[list[str]]:
         raise InputError(f"{path} is not a text file; save the sheet as CSV or XLSX.")
     first = text.split("\n", 1)[0]
     separator = max(",;\t", key=first.count)
-    return [row for row in csv.reader(io.StringIO(text), delimiter=separator) if any(row)]
+    try:
+        return [row for row in csv.reader(io.StringIO(text), delimiter=separator) if any(row)]
+    except csv.Error as error:
+        raise InputError(f"{path} is no CSV file ({error}); save the sheet again.") from None
+
+
+def _not_too_large(path: Path) -> None:
+    if path.stat().st_size > LARGEST_BYTES:
+        raise InputError(f"{path} is larger than {LARGEST_BYTES // 1_000_000} MB; split the sheet.")
 
 
 def _xlsx(path: Path) -> list[list[str]]:
@@ -268,12 +241,14 @@ def _xlsx(path: Path) -> list[list[str]]:
             "Reading XLSX needs openpyxl; install it with: pip install 'phaseid[spreadsheet]', or save "
             "the sheet as CSV."
         ) from None
+    _not_too_large(path)
     try:
         book = openpyxl.load_workbook(path, read_only=True, data_only=True)
-        rows = [
-            ["" if cell is None else str(cell) for cell in row]
-            for row in book.worksheets[0].iter_rows(values_only=True)
-        ]
+        # A small compressed file may hold any number of rows and columns.
+        sheet = book.worksheets[0].iter_rows(
+            values_only=True, max_row=MOST_ROWS + 2, max_col=MOST_COLUMNS
+        )
+        rows = [["" if cell is None else str(cell) for cell in row] for row in sheet]
         book.close()
     except Exception:
         raise InputError(f"{path} is not a readable XLSX file; save it again or as CSV.") from None

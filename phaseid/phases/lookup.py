@@ -7,15 +7,19 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
+from numpy.typing import NDArray
 
 from phaseid.phases.catalogue import fold
 from phaseid.phases.contexts import ContextTree
 from phaseid.phases.formula import parse
 from phaseid.phases.table import PhaseTable
 from phaseid.physics.elements import atomic_number
+from phaseid.physics.signals import eta
 
 if TYPE_CHECKING:
     import pandas as pd
+
+Floats = NDArray[np.float64]
 
 SCHEMA = "phaseid-phases/1"
 # Compositions closer than this in every mass fraction are the same formula.
@@ -75,7 +79,7 @@ def look_up(table: PhaseTable, filters: Filters, contexts: ContextTree) -> list[
         low, high = filters.mean_atomic_number
         keep &= (table.mean_atomic_number_max >= low) & (table.mean_atomic_number_min <= high)
     if filters.eta:
-        keep &= (table.eta >= filters.eta[0]) & (table.eta <= filters.eta[1])
+        keep &= _eta_in(table, *filters.eta)
     if filters.context:
         path = contexts.resolve(filters.context).path
         keep &= [_in_context(p.contexts, path) for p in table.phases]
@@ -86,19 +90,51 @@ def look_up(table: PhaseTable, filters: Filters, contexts: ContextTree) -> list[
     return [int(i) for i in np.flatnonzero(keep)]
 
 
+def _eta_in(table: PhaseTable, low: float, high: float) -> NDArray[np.bool_]:
+    c = table.conditions
+    rows = np.concatenate([table.rows.corner_mass_fractions, table.rows.mass_fractions])
+    owner = np.concatenate([table.rows.corner_phase, table.rows.phase])
+    values = eta(rows, c.energy_keV, c.tilt_deg, c.model, c.rule)
+    least, most = np.full(len(table.phases), np.inf), np.full(len(table.phases), -np.inf)
+    np.minimum.at(least, owner, values)
+    np.maximum.at(most, owner, values)
+    return (most >= low) & (least <= high)
+
+
 def _in_context(listed: Any, path: str) -> bool:
     """Listed for the context itself, for one above it, or for one below it."""
     return any(c == path or c.startswith(path + "/") or path.startswith(c + "/") for c in listed)
 
 
-def _same_composition(table: PhaseTable, text: str) -> np.ndarray[Any, np.dtype[np.bool_]]:
+def _same_composition(table: PhaseTable, text: str) -> NDArray[np.bool_]:
+    """Whether a composition lies within the range of each phase.
+
+    Compositions whose amounts are linear in their variables fill the convex hull of their corners, in
+    mass fractions as in atoms, so the nearest point of the hull decides.
+    """
     wanted = parse(text).mass_fractions()
-    close = np.abs(table.rows.mass_fractions - wanted).max(axis=1) < SAME_COMPOSITION
-    ends = np.abs(table.rows.corner_mass_fractions - wanted).max(axis=1) < SAME_COMPOSITION
-    found = np.zeros(len(table.phases), dtype=bool)
-    found[table.rows.phase[close]] = True
-    found[table.rows.corner_phase[ends]] = True
+    rows = np.concatenate([table.rows.corner_mass_fractions, table.rows.mass_fractions])
+    owner = np.concatenate([table.rows.corner_phase, table.rows.phase])
+    count = len(table.phases)
+    least, most = np.full((count, len(wanted)), np.inf), np.full((count, len(wanted)), -np.inf)
+    np.minimum.at(least, owner, rows)
+    np.maximum.at(most, owner, rows)
+    inside = (least - SAME_COMPOSITION <= wanted) & (wanted <= most + SAME_COMPOSITION)
+    found: NDArray[np.bool_] = np.asarray(inside.all(axis=1))
+    for i in np.flatnonzero(found):
+        found[i] = _distance_to_hull(rows[owner == i], wanted) < SAME_COMPOSITION
     return found
+
+
+def _distance_to_hull(corners: Floats, wanted: Floats) -> float:
+    """Largest difference in a mass fraction from the nearest point of a hull."""
+    from scipy.optimize import nnls
+
+    # A heavy last equation makes the shares of the corners sum to one.
+    heavy = 1e3
+    system = np.vstack([corners.T, np.full(len(corners), heavy)])
+    shares, _ = nnls(system, np.append(wanted, heavy))
+    return float(np.abs(shares @ corners - wanted).max())
 
 
 def listing(table: PhaseTable, positions: Sequence[int]) -> dict[str, Any]:

@@ -5,9 +5,9 @@ from __future__ import annotations
 from pathlib import Path
 
 import numpy as np
+import phaseid_databases
 import pytest
 
-import phaseid_databases
 from phaseid.phases import database
 from phaseid.phases.catalogue import fold
 from phaseid.phases.checks import check

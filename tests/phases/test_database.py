@@ -10,9 +10,11 @@ from phaseid.phases.checks import check
 from phaseid.phases.compositions import cache_folder
 from phaseid.phases.contexts import Context, ContextTree
 from phaseid.phases.database import DatabaseError, load
-from phaseid.phases.importing import preview, read_sheet, to_yaml, write_database
+from phaseid.phases.importing import preview, read_sheet
 from phaseid.phases.kept import load_kept
-from phaseid.phases.oxidation import imbalance
+from phaseid.phases.oxidation import imbalance, valence_needed
+from phaseid.phases.records import Phase
+from phaseid.phases.writing import append_phase, to_yaml, write_database
 from phaseid.physics.elements import from_atoms
 
 GOOD = """schema: phaseid-database/1
@@ -228,3 +230,142 @@ def test_kept_records_equal_read_ones_and_follow_the_file(tmp_path, monkeypatch)
     for file in cache_folder().glob("database-*.json"):
         file.write_text("{broken", encoding="utf-8")
     assert load_kept(path).phases[0].density_range == (6.5, 6.9)
+
+
+def test_a_phase_is_added_below_what_is_there(tmp_path):
+    text = "# our own\n" + GOOD.replace("name: mine", "name: mine\ntitle: Ours  # keep")
+    path = write(tmp_path, text)
+    phase = Phase("Lab carbide", "(Cr{x}Fe{1-x})7C3", "own", ranges={"x": (0.1, 0.4)},
+                  density_range=(6.9, 7.1), contexts={"steel": "common"})  # fmt: skip
+    assert append_phase(path, phase) == 3
+    assert path.read_text(encoding="utf-8").startswith(text)
+    again = load(path).phases[2]
+    assert (again.name, again.ranges, again.density_range) == (
+        "Lab carbide", {"x": (0.1, 0.4)}, (6.9, 7.1),
+    )  # fmt: skip
+    before = path.read_bytes()
+    with pytest.raises(InputError, match="already has"):
+        append_phase(path, phase)
+    assert path.read_bytes() == before
+    assert append_phase(tmp_path / "new.yaml", phase) == 1
+    assert load(tmp_path / "new.yaml").name == "new"
+
+
+@pytest.mark.parametrize(
+    "text",
+    [
+        "schema: phaseid-database/1\nphases: []\n",
+        "schema: phaseid-database/1\nphases:\n- {name: A, formula: MgO, contexts: {steel: rare}, source: me}\n",
+    ],
+)
+def test_a_phase_is_added_whatever_the_layout(tmp_path, text):
+    path = write(tmp_path, text)
+    count = len(load(path).phases)
+    phase = Phase("B", "CaO", "own", contexts={"steel": "common"})
+    assert append_phase(path, phase) == count + 1
+    assert load(path).phases[-1].formula == "CaO"
+
+
+def test_a_file_nothing_can_be_added_to_is_left_alone(tmp_path):
+    path = write(tmp_path, GOOD + "title: at the end\n")
+    before = path.read_bytes()
+    with pytest.raises(InputError, match="nothing can be added"):
+        append_phase(path, Phase("B", "CaO", "own", contexts={"steel": "common"}))
+    assert path.read_bytes() == before
+
+
+@pytest.mark.parametrize(
+    ("content", "word"),
+    [
+        (b"", "empty"),
+        (b"a,b\n1,2\n", "no column 'name'"),
+        (b"name,formula\nx\0y,FeO\n", "not a text file"),
+        (b'name,formula\n"' + b"x" * 200_000 + b'",FeO\n', "no CSV"),
+    ],
+)
+def test_sheets_that_cannot_be_read(tmp_path, content, word):
+    path = tmp_path / "sheet.csv"
+    path.write_bytes(content)
+    with pytest.raises(InputError, match=word):
+        read_sheet(path)
+
+
+def test_other_files_named_like_sheets_are_refused(tmp_path):
+    (tmp_path / "sheet.xlsx").write_bytes(b"no workbook")
+    for name, word in (("sheet.xlsx", "not a readable XLSX"), ("none.csv", "no file")):
+        with pytest.raises(InputError, match=word):
+            read_sheet(tmp_path / name)
+    with pytest.raises(InputError, match="no file"):
+        read_sheet(tmp_path)
+
+
+def test_doubts_about_clean_rows_are_told(tmp_path):
+    tree = ContextTree([Context("steel", "Steel")])
+    rows = [
+        {"name": "A", "formula": "PbO", "contexts": "steel"},
+        {"name": "B", "formula": "Mg2SiO5", "contexts": "steel"},
+        {"name": "C", "formula": "MgO", "contexts": "steel", "density": "3.6"},
+    ]
+    found = preview(rows, merge([]), tree, "lab")
+    assert not found.refused
+    assert sorted(d.split(":")[0] for d in found.doubts) == ["A", "B"]
+    assert "holds Pb" in found.doubts[0]
+
+
+@pytest.mark.parametrize(
+    ("formula", "system", "name", "word"),
+    [
+        ("PbCrO4", "monoclinic", "A", "holds Pb"),
+        ("BaCrO4", "orthorhombic", "A", "chromium"),
+        ("K2Cr2O7", "triclinic", "A", "chromium"),
+        ("SiO2", "tetragonal", "A", "crystalline silica"),
+        ("SiO2", None, "Quartz dust", "crystalline silica"),
+        ("Ca2Mg5Si8O22(OH)2", "monoclinic", "Tremolite", "fibrous"),
+        ("(Fe,Ni)9S8", "cubic", "A", "nickel sulphide"),
+        ("UO2", "cubic", "A", "holds U"),
+        ("wt% SiO2 90 BeO 10", None, "A", "holds Be"),
+        ("Cr2O3", "trigonal", "A", None),
+        ("CrO2", "tetragonal", "A", None),
+        ("FeCr2O4", "cubic", "A", None),
+        ("SiO2", "amorphous", "A", None),
+        ("NiO", "cubic", "A", None),
+    ],
+)
+def test_what_calls_for_a_caution(formula, system, name, word):
+    tree = ContextTree([Context("steel", "Steel")])
+    phase = Phase(name, formula, "x", crystal_system=system, contexts={"steel": "rare"})
+    told = [f.message for f in check([phase], tree) if "hazard" in f.message]
+    assert bool(told) == (word is not None)
+    assert word is None or word in told[0]
+
+
+def test_chromium_states_that_charges_ask_for():
+    assert valence_needed(from_atoms({"Ca": 1, "Cr": 1, "O": 4}), "Cr") == pytest.approx(6)
+    assert valence_needed(from_atoms({"Cr": 2, "O": 3}), "Cr") == pytest.approx(3)
+    assert valence_needed(from_atoms({"Fe": 1}), "Cr") == 0
+
+
+def test_density_far_from_like_phases_is_a_remark():
+    tree = ContextTree([Context("steel", "Steel")])
+    phases = []
+    # Made so that volumes add: 10 cm3/mol for each atom.
+    for n in range(210):
+        grams = (24.305 + 15.999 * (1 + n % 5)) / (20.0 + 10 * (n % 5))
+        phases.append(
+            Phase(f"P{n}", f"MgO{1 + n % 5}", "x", density_range=(grams, grams),
+                  contexts={"steel": "rare"})
+        )  # fmt: skip
+    odd = Phase("Odd", "MgO2", "x", density_range=(3.4, 3.4), contexts={"steel": "rare"})
+    found = [f.phase for f in check([*phases, odd], tree) if "is far from" in f.message]
+    assert found == ["Odd"]
+
+
+def test_polymorphs_are_told_from_twins(tmp_path):
+    tree = ContextTree([Context("steel", "Steel")])
+    common = {"source": "x", "contexts": {"steel": "rare"}, "crystal_system": "tetragonal"}
+    phases = [
+        Phase("Rutile", "TiO2", density_range=(4.25, 4.25), **common),
+        Phase("Anatase", "O2Ti", density_range=(3.88, 3.88), **common),
+        Phase("Twin", "Ti2O4", density_range=(4.24, 4.26), **common),
+    ]
+    assert [f.phase for f in check(phases, tree) if "keep both" in f.message] == ["Twin"]

@@ -102,6 +102,9 @@ def test_contexts_are_found_by_unique_last_part():
         (Filters(with_all=("Mg", "O")), ["Olivine"]),
         (Filters(with_none=("O",)), ["Gold"]),
         (Filters(formula="Fe2SiO4"), ["Olivine"]),
+        # Between the compositions that stand for the range.
+        (Filters(formula="Mg1.23Fe0.77SiO4"), ["Olivine"]),
+        (Filters(formula="Mg1.23Fe0.77Si1.2O4"), []),
         (Filters(mean_atomic_number=(12, 13)), ["Olivine"]),
         (Filters(eta=(0.4, 0.6)), ["Gold"]),
         (Filters(context="ore"), ["Olivine", "Gold"]),
