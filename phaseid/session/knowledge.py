@@ -173,6 +173,18 @@ class Knowledge:
             raise InputError("The plugins exclude every phase; see 'phaseid plugins list'.")
         return weights
 
+    def search(self, text: str, most: int = 60) -> list[tuple[str, str]]:
+        """Phases whose name, other name or formula holds a text: name, and name with formula."""
+        wanted = fold(text)
+        found = []
+        for phase in self.catalogue.phases:
+            names = [fold(n) for n in (*phase.names, phase.formula)]
+            if any(wanted in n for n in names):
+                starts = not any(n.startswith(wanted) for n in names)
+                found.append((starts, phase.name, f"{phase.name}  {phase.formula}"))
+        # What begins with the text comes first.
+        return [(name, shown) for _, name, shown in sorted(found)[:most]]
+
     def image_factors(
         self,
         contexts: Sequence[str],
@@ -284,9 +296,7 @@ def _candidates(table: PhaseTable) -> Candidates:
     )
 
 
-def _pairs(
-    rules: Sequence[Coexistence], candidates: Candidates
-) -> dict[tuple[int, int], float]:
+def _pairs(rules: Sequence[Coexistence], candidates: Candidates) -> dict[tuple[int, int], float]:
     pairs: dict[tuple[int, int], float] = {}
     for rule in rules:
         first = [candidates.lookup[fold(n)] for n in rule.first if fold(n) in candidates.lookup]

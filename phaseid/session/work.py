@@ -144,6 +144,12 @@ class Session:
             kept = tuple(e for e in kept if not (e.kind == "count" and e.image == image))
         return replace(self.state, edits=(*kept, edit))
 
+    def remember(self, phase: str, image_sha256: str, grey: float, note: str = "") -> None:
+        """Keep an accepted identification for this laboratory."""
+        if self.knowledge.learned is not None:
+            contexts = self.knowledge.check_contexts(self.state.contexts)
+            self.knowledge.learned.accept(contexts, phase, image_sha256, grey, note)
+
     # --- answers ---
 
     def image(self, index: int) -> GreyImage:
@@ -163,10 +169,11 @@ class Session:
         state = state or self.state
         return self.pictures.clustering(state.images[index], _edits(state, index), progress)
 
-    def notices(self, index: int) -> list[Notice]:
+    def notices(self, index: int, state: State | None = None) -> list[Notice]:
         """Warnings of one image: its fitness, its clusters, and whether it has changed."""
-        ref = self.state.images[index]
-        seen = self.pictures.summary(ref, _edits(self.state, index))
+        state = state or self.state
+        ref = state.images[index]
+        seen = self.pictures.summary(ref, _edits(state, index))
         found = [Notice(f.code, f.message, f.remedy) for f in seen.findings]
         found += self.knowledge.notices()
         if ref.sha256 and seen.sha256 != ref.sha256:
@@ -213,24 +220,41 @@ class Session:
             raise InputError("There is no image to analyse; give at least one.")
         count = len(state.images)
         pictures = []
-        for i, ref in enumerate(state.images):
+        for i in range(count):
             part = None if progress is None else _part(progress, i, count)
-            seen = self.pictures.summary(ref, _edits(state, i), part)
-            pictures.append(
-                Picture(
-                    i,
-                    ref.path,
-                    seen.energy_keV,
-                    seen.tilt_deg,
-                    seen.clusters,
-                    seen.diameters_um,
-                )
-            )
+            pictures.append(self._picture(i, state, part))
         groups = [pictures] if state.same_settings else [[p] for p in pictures]
         return [
             analyse(state, self.knowledge, group, top=top, with_advice=with_advice)
             for group in groups
         ]
+
+    def answer_of(
+        self,
+        index: int,
+        *,
+        state: State | None = None,
+        top: int = TOP,
+        with_advice: bool = True,
+        progress: Progress | None = None,
+    ) -> Analysis:
+        """Rank the clusters of one image on its own grey scale; parameters as for `answers`.
+
+        Raises
+        ------
+        InputError
+            As for `answers`.
+        """
+        state = state or self.state
+        picture = self._picture(index, state, progress)
+        return analyse(state, self.knowledge, [picture], top=top, with_advice=with_advice)
+
+    def _picture(self, index: int, state: State, progress: Progress | None) -> Picture:
+        ref = state.images[index]
+        seen = self.pictures.summary(ref, _edits(state, index), progress)
+        return Picture(
+            index, ref.path, seen.energy_keV, seen.tilt_deg, seen.clusters, seen.diameters_um
+        )
 
 
 def _edits(state: State, index: int) -> tuple[Edit, ...]:
