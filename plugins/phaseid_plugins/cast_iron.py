@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 from phaseid.hooks import hookimpl
-from phaseid.phases.contexts import Context
+from phaseid.phases.contexts import Coexistence, Context
 
 CONTEXTS = (
     Context("cast-iron", "Cast iron", "Iron with more carbon than austenite can hold."),
@@ -27,7 +27,23 @@ CONTEXTS = (
     ),
 )
 
+COEXISTENCE = (
+    Coexistence(
+        ("Manganese sulphide inclusion",),
+        ("Magnesium sulphide inclusion",),
+        0.2,
+        "Magnesium takes the sulphur from manganese; manganese sulphide is left only where the treatment "
+        "failed (common practice).",
+        ("cast-iron/ductile",),
+    ),
+)
+
 
 @hookimpl
 def register_contexts() -> Sequence[Context]:
     return CONTEXTS
+
+
+@hookimpl
+def register_coexistence() -> Sequence[Coexistence]:
+    return COEXISTENCE

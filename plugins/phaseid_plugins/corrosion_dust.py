@@ -8,7 +8,7 @@ from phaseid.hooks import hookimpl
 from phaseid.phases.contexts import Context
 
 CONTEXTS = (
-    Context("corrosion", "Corrosion product", "Products of corrosion."),
+    Context("corrosion", "Corrosion product", "What a metal turns into in water, air or hot gas."),
     Context("corrosion/steel", "Rust", "Iron oxides, hydroxides, chlorides, carbonate."),
     Context(
         "corrosion/copper",

@@ -19,10 +19,12 @@ CONTEXTS = (
 
 COEXISTENCE = (
     Coexistence(
-        ("Eta carbide (Co,W)6C", "Eta phase (W,Co)6C", "Eta carbide M6C (hard metal)"),
+        ("Ditungsten carbide",),
         ("Graphite",),
         0.05,
-        "Eta carbide needs too little carbon, graphite too much (phase diagram W-C-Co); common practice in hard-metal control.",
+        "W2C means too little carbon, graphite too much (phase diagram C-Co-W; "
+        "common practice in hard-metal control).",
+        ("hard-metal",),
     ),
 )
 

@@ -8,7 +8,7 @@ from phaseid.hooks import hookimpl
 from phaseid.phases.contexts import Coexistence, Context
 
 CONTEXTS = (
-    Context("rock", "Rock", "Rocks and soils."),
+    Context("rock", "Rock", "Natural rocks, ores, soils and meteorites."),
     Context("rock/igneous", "Igneous rock", "Rocks from a melt."),
     Context(
         "rock/igneous/granite",
@@ -24,12 +24,20 @@ CONTEXTS = (
         "rock/igneous/rhyolite", "Rhyolite", "Glass or fine groundmass with quartz and sanidine."
     ),
     Context("rock/igneous/syenite", "Syenite", "Alkali feldspar with little or no quartz."),
-    Context("rock/igneous/andesite", "Andesite", "Plagioclase, pyroxene, amphibole."),
+    Context(
+        "rock/igneous/andesite",
+        "Andesite",
+        "Plagioclase with pyroxene or amphibole and a glassy groundmass.",
+    ),
     Context(
         "rock/igneous/basalt", "Basalt", "Plagioclase, augite, olivine, titanomagnetite, glass."
     ),
     Context("rock/igneous/gabbro", "Gabbro", "Plagioclase, pyroxenes, olivine, ilmenite."),
-    Context("rock/igneous/ultramafic", "Ultramafic rock", "Olivine, pyroxenes, chromite."),
+    Context(
+        "rock/igneous/ultramafic",
+        "Ultramafic rock",
+        "Olivine and pyroxenes with chromite, often serpentinised.",
+    ),
     Context(
         "rock/igneous/kimberlite",
         "Kimberlite and lamproite",
@@ -43,28 +51,60 @@ CONTEXTS = (
     Context("rock/igneous/alkaline", "Alkaline rock", "Nepheline, aegirine, sodalite, eudialyte."),
 )
 
+_SILICA = ("Quartz", "Tridymite", "Cristobalite")
+
 COEXISTENCE = (
     Coexistence(
-        ("Quartz", "Tridymite", "Cristobalite"),
+        _SILICA,
         (
             "Forsterite",
             "Nepheline",
             "Leucite",
-            "Sodalite",
             "Kalsilite",
+            "Sodalite",
+            "Nosean",
+            "Haüyne",
+            "Cancrinite",
             "Melilite",
+            "Åkermanite",
             "Larnite",
+            "Monticellite",
             "Perovskite",
-            "Corundum",
         ),
         0.05,
-        "Silica reacts with undersaturated minerals at equilibrium (silica saturation; Shand 1927, Eruptive Rocks).",
+        "Silica reacts with undersaturated minerals (silica saturation; Shand 1927, Eruptive Rocks); both "
+        "together mean a foreign grain.",
+        ("rock/igneous",),
     ),
     Coexistence(
-        ("Nepheline",),
+        _SILICA,
+        ("Corundum", "Spinel"),
+        0.1,
+        "Silica reacts with corundum to aluminium silicate and with magnesian spinel to cordierite (phase "
+        "diagram MgO-Al2O3-SiO2).",
+        ("rock/igneous", "rock/metamorphic"),
+    ),
+    Coexistence(
+        _SILICA,
+        ("Baddeleyite",),
+        0.3,
+        "Baddeleyite and silica react to zircon; in slowly cooled mafic rocks it may survive beside late "
+        "quartz (Heaman & LeCheminant 1993).",
+        ("rock/igneous",),
+    ),
+    Coexistence(
+        ("Nepheline", "Kalsilite"),
         ("Enstatite",),
         0.1,
-        "Nepheline and orthopyroxene react to olivine and albite (silica saturation, CIPW norm).",
+        "Nepheline and orthopyroxene react to olivine and albite (silica saturation; Yoder & Tilley 1962).",
+        ("rock/igneous",),
+    ),
+    Coexistence(
+        ("Melilite", "Åkermanite"),
+        ("Albite", "Plagioclase"),
+        0.15,
+        "Melilite and sodic plagioclase react to nepheline and clinopyroxene (Schairer & Yoder 1964).",
+        ("rock/igneous",),
     ),
 )
 

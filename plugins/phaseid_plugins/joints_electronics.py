@@ -16,7 +16,7 @@ CONTEXTS = (
         "Tin-silver-copper and tin-bismuth solders.",
     ),
     Context("joint/braze", "Brazed joint", "Silver, copper, nickel and aluminium brazes."),
-    Context("electronics", "Electronics", "Packages, boards, dies."),
+    Context("electronics", "Electronics", "Packages, boards, dies and what joins them."),
     Context(
         "electronics/metallisation",
         "Metallisation",

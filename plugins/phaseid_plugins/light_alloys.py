@@ -25,7 +25,7 @@ CONTEXTS = (
     Context(
         "aluminium-alloy/3xxx",
         "3xxx aluminium",
-        "Aluminium-manganese: Al6(Mn,Fe), alpha-Al(Mn,Fe)Si.",
+        "Aluminium-manganese alloys with Al6(Mn,Fe) and alpha-Al(Mn,Fe)Si.",
     ),
     Context(
         "aluminium-alloy/5xxx",
@@ -33,7 +33,9 @@ CONTEXTS = (
         "Aluminium-magnesium: beta phase, Mg2Si, Al6(Mn,Fe).",
     ),
     Context(
-        "aluminium-alloy/6xxx", "6xxx aluminium", "Aluminium-magnesium-silicon: Mg2Si, beta-AlFeSi."
+        "aluminium-alloy/6xxx",
+        "6xxx aluminium",
+        "Aluminium-magnesium-silicon alloys with Mg2Si and beta-AlFeSi.",
     ),
     Context(
         "aluminium-alloy/7xxx",
@@ -49,7 +51,7 @@ CONTEXTS = (
     Context(
         "magnesium-alloy/rare-earth",
         "Magnesium rare-earth alloy",
-        "Bright rare-earth intermetallics.",
+        "Magnesium matrix with bright rare-earth intermetallics.",
     ),
     Context(
         "titanium-alloy",

@@ -8,7 +8,7 @@ from phaseid.hooks import hookimpl
 from phaseid.phases.contexts import Context
 
 CONTEXTS = (
-    Context("nickel-alloy", "Nickel alloy", "Nickel-based alloys."),
+    Context("nickel-alloy", "Nickel alloy", "Alloys whose matrix is nickel."),
     Context(
         "nickel-alloy/superalloy",
         "Nickel superalloy",
@@ -29,7 +29,7 @@ CONTEXTS = (
         "Solid-solution nickel alloy",
         "Nickel-copper, nickel-chromium and nickel-molybdenum alloys.",
     ),
-    Context("cobalt-alloy", "Cobalt alloy", "Cobalt-based alloys."),
+    Context("cobalt-alloy", "Cobalt alloy", "Alloys whose matrix is cobalt."),
     Context(
         "cobalt-alloy/wear",
         "Wear-resistant cobalt alloy",

@@ -37,7 +37,7 @@ CONTEXTS = (
     Context(
         "rock/ore/magmatic-sulphide",
         "Magmatic nickel-copper ore",
-        "Pyrrhotite, pentlandite, chalcopyrite.",
+        "Pyrrhotite, pentlandite and chalcopyrite with magnetite.",
     ),
     Context(
         "rock/ore/platinum-group",
@@ -63,32 +63,48 @@ CONTEXTS = (
     Context("rock/ore/rare-earth", "Rare-earth ore", "Bastnaesite, monazite, xenotime, parisite."),
     Context("rock/ore/uranium", "Uranium ore", "Uraninite, coffinite, brannerite; radioactive."),
     Context("rock/ore/iron", "Iron ore", "Hematite, goethite, magnetite, quartz."),
-    Context("rock/ore/manganese", "Manganese ore", "Pyrolusite, braunite, rhodochrosite."),
+    Context("rock/ore/manganese", "Manganese ore", "Manganese oxides, braunite and rhodochrosite."),
     Context("rock/ore/laterite", "Laterite", "Goethite, nickel silicates, asbolane, gibbsite."),
     Context(
         "rock/ore/supergene", "Supergene ore", "Secondary copper, lead, zinc and silver minerals."
     ),
-    Context("rock/ore/antimony-mercury", "Antimony-mercury ore", "Stibnite, cinnabar, realgar."),
+    Context(
+        "rock/ore/antimony-mercury",
+        "Antimony-mercury ore",
+        "Stibnite, cinnabar and realgar in quartz or carbonate.",
+    ),
 )
 
 COEXISTENCE = (
     Coexistence(
+        ("Pyrrhotite", "Pentlandite"),
+        ("Hematite",),
+        0.15,
+        "Pyrrhotite and hematite are separated by pyrite with magnetite (sulphur and oxygen fugacity; "
+        "Barton & Skinner 1979); both together mean weathering.",
+        ("rock/ore",),
+    ),
+    Coexistence(
         ("Pyrrhotite",),
-        ("Hematite",),
-        0.1,
-        "Pyrrhotite and hematite are separated by the pyrite-magnetite assemblage (sulphur and oxygen fugacity; Barton & Skinner 1979).",
-    ),
-    Coexistence(
-        ("Gold", "Electrum"),
-        ("Native iron", "Kamacite"),
-        0.05,
-        "No common environment; common practice.",
-    ),
-    Coexistence(
-        ("Graphite",),
-        ("Hematite",),
+        ("Covellite", "Chalcocite", "Digenite"),
         0.2,
-        "Graphite reduces hematite at metamorphic temperatures (French & Eugster 1965).",
+        "These copper sulphides need a sulphur fugacity or oxidation at which pyrrhotite turns to pyrite "
+        "(Barton & Skinner 1979); both together mean supergene alteration.",
+        ("rock/ore",),
+    ),
+    Coexistence(
+        ("Troilite",),
+        ("Pyrite", "Marcasite"),
+        0.1,
+        "Pyrrhotite lies between troilite and pyrite (phase diagram Fe-S; Craig & Scott 1974).",
+        ("rock",),
+    ),
+    Coexistence(
+        ("Löllingite",),
+        ("Pyrite",),
+        0.1,
+        "They react to arsenopyrite and pyrrhotite (Kretschmar & Scott 1976).",
+        ("rock/ore", "rock/metamorphic"),
     ),
 )
 

@@ -16,7 +16,9 @@ CONTEXTS = (
     ),
     Context("rock/sedimentary/shale", "Shale", "Clays, quartz, pyrite, organic matter."),
     Context("rock/sedimentary/limestone", "Limestone", "Calcite, dolomite, clay, pyrite."),
-    Context("rock/sedimentary/dolostone", "Dolostone", "Dolomite, calcite, anhydrite."),
+    Context(
+        "rock/sedimentary/dolostone", "Dolostone", "Dolomite with calcite, anhydrite and quartz."
+    ),
     Context(
         "rock/sedimentary/evaporite",
         "Evaporite",

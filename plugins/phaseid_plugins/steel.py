@@ -112,24 +112,80 @@ CONTEXTS = (
     ),
 )
 
+# In one melt the deoxidant that binds oxygen more tightly reduces the oxides of the others.
 COEXISTENCE = (
     Coexistence(
-        ("Corundum", "Alumina inclusion"),
-        ("Wustite", "Wüstite", "Iron oxide (FeO) inclusion"),
-        0.1,
-        "Aluminium in the melt reduces iron oxide; common practice in clean-steel assessment.",
-    ),
-    Coexistence(
-        ("Quartz", "Cristobalite", "Silica inclusion", "Tridymite"),
-        ("Corundum", "Alumina inclusion"),
+        ("Corundum", "Alumina cluster, matrix-filled", "Spinel"),
+        ("Wüstite", "Manganese-iron monoxide inclusion"),
         0.2,
-        "Silica and alumina react to mullite at equilibrium (phase diagram Al2O3-SiO2); both together mean two sources.",
+        "Aluminium in the melt reduces iron and manganese oxide; both together mean reoxidation or scale "
+        "(common practice in clean-steel assessment).",
+        ("steel",),
     ),
     Coexistence(
-        ("Lime", "Free lime"),
-        ("Corundum", "Alumina inclusion"),
+        ("Silica inclusion", "Quartz", "Cristobalite", "Tridymite"),
+        ("Corundum", "Spinel"),
+        0.2,
+        "Silica and alumina react to aluminosilicates; both together mean two sources (phase diagram "
+        "Al2O3-SiO2).",
+        ("steel",),
+    ),
+    Coexistence(
+        ("Lime", "Calcium oxide inclusion, magnesian"),
+        ("Corundum", "Silica inclusion", "Quartz", "Cristobalite"),
         0.05,
-        "Lime and alumina react to calcium aluminates (phase diagram CaO-Al2O3).",
+        "Lime reacts with alumina to calcium aluminates and with silica to calcium silicates (phase "
+        "diagram CaO-Al2O3-SiO2).",
+        ("steel",),
+    ),
+    Coexistence(
+        (
+            "Iron sulphide film, grain-boundary",
+            "Iron oxysulphide inclusion",
+            "Pyrrhotite",
+            "Troilite",
+        ),
+        (
+            "Calcium sulphide inclusion",
+            "Calcium-manganese sulphide inclusion",
+            "Cerium-lanthanum oxysulphide",
+            "Rare-earth monosulphide",
+        ),
+        0.05,
+        "Calcium and rare earths bind sulphur far more tightly than iron does (free energies of the "
+        "sulphides; Turkdogan 1996, Fundamentals of Steelmaking).",
+        ("steel",),
+    ),
+    Coexistence(
+        ("Calcium sulphide inclusion",),
+        (
+            "Silica inclusion",
+            "Manganese iron metasilicate inclusion",
+            "Manganese-iron monoxide inclusion",
+        ),
+        0.1,
+        "Calcium sulphide forms at oxygen activities far below those at which silica and manganese "
+        "silicates do (Turkdogan 1996, Fundamentals of Steelmaking).",
+        ("steel",),
+    ),
+    Coexistence(
+        ("Cerium-lanthanum oxysulphide", "Rare-earth monosulphide", "Rare-earth oxide inclusion"),
+        (
+            "Silica inclusion",
+            "Manganese iron metasilicate inclusion",
+            "Manganese-iron monoxide inclusion",
+        ),
+        0.05,
+        "Rare earths reduce silica and manganese silicates (free energies of the oxides; Kiessling & "
+        "Lange 1978, Non-metallic Inclusions in Steel).",
+        ("steel",),
+    ),
+    Coexistence(
+        ("Titanium carbonitride inclusion",),
+        ("Manganese-iron monoxide inclusion", "Wüstite"),
+        0.2,
+        "Titanium that is left to form nitride would have reduced these oxides; common practice.",
+        ("steel",),
     ),
 )
 
