@@ -2,9 +2,11 @@
 
 from __future__ import annotations
 
+import ast
 import re
 import subprocess
 import sys
+import tomllib
 from pathlib import Path
 
 import pytest
@@ -63,16 +65,63 @@ def test_modules_are_short():
 
 
 def test_no_path_of_a_machine():
-    found = []
-    for path in files():
-        if (
-            path.suffix in (".py", ".md", ".yaml", ".toml", ".json", ".html", ".tcss")
-            and path.exists()
-        ):
-            text = path.read_text("utf-8")
-            if re.search(r"/home/\w+/|/root/|C:\\\\Users", text) and path.name != "test_hygiene.py":
-                found.append(path.name)
+    path_of_somebody = re.compile(
+        r"/home/\w+/|/root/|/Users/\w+/|C:\\\\Users|" + re.escape(str(ROOT)) + r"\b"
+    )
+    read = (".py", ".md", ".yaml", ".toml", ".json", ".html", ".tcss", ".txt", "")
+    found = [
+        path.name
+        for path in files()
+        if path.suffix in read
+        and path.name != Path(__file__).name
+        and path.exists()
+        and path_of_somebody.search(path.read_text("utf-8"))
+    ]
     assert not found
+
+
+# Names under which distributions are imported, where these differ.
+IMPORTED_AS = {
+    "scikit-learn": "sklearn",
+    "scikit-image": "skimage",
+    "pillow": "PIL",
+    "pyyaml": "yaml",
+    "python-docx": "docx",
+}
+# Compared with where they happen to be installed.
+MAY_BE_ABSENT = {"numba"}
+
+
+def imports(folder):
+    """Top-level names of other people's packages that files of a folder import."""
+    found = set()
+    for path in (ROOT / folder).rglob("*.py"):
+        for node in ast.walk(ast.parse(path.read_text("utf-8"))):
+            if isinstance(node, ast.Import):
+                found |= {alias.name.split(".")[0] for alias in node.names}
+            elif isinstance(node, ast.ImportFrom) and node.module and not node.level:
+                found.add(node.module.split(".")[0])
+    ours = {"phaseid", "phaseid_plugins", "phaseid_databases", "tests"}
+    return found - ours - set(sys.stdlib_module_names)
+
+
+def declared(project, *extras):
+    wanted = list(project["dependencies"])
+    for extra in extras:
+        wanted += project["optional-dependencies"][extra]
+    names = {re.split(r"[<>=!~ \[;]", text)[0] for text in wanted}
+    return {IMPORTED_AS.get(name, name.replace("-", "_")) for name in names}
+
+
+def test_every_import_is_declared():
+    project = tomllib.loads((ROOT / "pyproject.toml").read_text("utf-8"))["project"]
+    packages = imports("phaseid") | imports("plugins") | imports("databases")
+    assert packages <= declared(project, "spreadsheet", "docx")
+    assert imports("tests") - MAY_BE_ABSENT <= declared(project, "test", "spreadsheet", "docx")
+    assert imports("examples") <= declared(project)
+    unused = declared(project) - packages
+    # Read compressed TIFF for tifffile.
+    assert unused <= {"imagecodecs"}
 
 
 def test_readme_commands_are_what_ci_runs():
