@@ -79,7 +79,7 @@ def channelled(measured: Measured, noise: NoiseLaw, labels: list[int]) -> list[t
     while len(alive) > 1:
         best, pair = np.inf, -1
         for n, (a, b) in enumerate(itertools.pairwise(alive)):
-            score = _apart(found[a], found[b], noise, (span[a][0], span[b][1]))
+            score = _apart(found[a], found[b], noise, (*span[a], *span[b]))
             if score < best:
                 best, pair = score, n
         if best >= 1.0:
@@ -92,11 +92,14 @@ def channelled(measured: Measured, noise: NoiseLaw, labels: list[int]) -> list[t
     return merged
 
 
-def _apart(a: Population, b: Population, noise: NoiseLaw, span: tuple[float, float]) -> float:
+def _apart(
+    a: Population, b: Population, noise: NoiseLaw, spans: tuple[float, float, float, float]
+) -> float:
     """Separation over the least that two phases need; below one they are one phase."""
     step = b.mean - a.mean
     grey = max(abs(b.mean), 1e-9)
-    if step > CHANNELLING_SHARE * grey or span[1] - span[0] > CHANNELLING_SPAN * grey:
+    gap, span = spans[2] - spans[1], spans[3] - spans[0]
+    if gap > CHANNELLING_SHARE * grey or span > CHANNELLING_SPAN * grey:
         return np.inf
     fewest = max(min(a.regions, b.regions), 1.0)
     # An error of a few per cent of the noise is always there, from borders drawn a little wrong.

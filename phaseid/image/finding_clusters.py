@@ -44,8 +44,6 @@ LEAST_LINES = 2e-4
 # Pores are darker than the commonest phase by this share of all greys, and this many noises.
 VOID_SHARE = 0.35
 VOID_STEP = 3.0
-# Rows corrected by more than this many noise standard deviations are not trusted.
-MUTED = 0.25
 
 
 @dataclass(frozen=True, eq=False)
@@ -220,7 +218,7 @@ def _flattened(
             best, counts = trial, found
             warnings.append(finding_of(code, amount * unit))
             if code == "charging-bands":
-                best = replace(best, muted=np.abs(lines) > MUTED)
+                best = replace(best, muted=offsets.doubtful)
     surface = surface_from_slopes(counts.slopes, best.shading.shape)
     if surface is not None and surface.amplitude() >= LEAST_SHADING:
         trial, found = counted(replace(surface, lines=best.shading.lines), 0.11)

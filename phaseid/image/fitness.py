@@ -26,7 +26,7 @@ NARROW_SHARE = 0.15
 COMB_SHARE = 0.15
 # Mean squared difference across the borders of 8 x 8 blocks over that inside of them.
 BLOCK_RATIO = 1.10
-BLOCK_SIGMAS = 6.0
+BLOCK_SIGMAS = 4.0
 # Phases a step of atomic number apart differ by some three per cent of the signal (Fe-Co, 20 keV).
 FAINT_CONTRAST = 0.03
 SMALLEST_SIGNAL_TO_NOISE = 3.0

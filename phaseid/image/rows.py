@@ -24,6 +24,7 @@ LINE_REACH = 12.0
 # A band ends where the grey is back to within this share of the jump, or after this share of the rows.
 BACK = 0.15
 LONGEST_BAND = 0.2
+MOST_DOUBTFUL = 0.7
 
 
 @dataclass(frozen=True, eq=False)
@@ -38,12 +39,15 @@ class RowOffsets:
         The same with what lasts for many rows after a jump.
     line_sd : float
     largest_jump : float
+    doubtful : ndarray of bool, shape (rows,), or None
+        Rows in and after bands, where the correction leaves something behind.
     """
 
     lines: FloatArray | None
     bands: FloatArray | None
     line_sd: float
     largest_jump: float
+    doubtful: NDArray[np.bool_] | None = None
 
 
 def row_offsets(canvas: Canvas) -> RowOffsets:
@@ -74,9 +78,9 @@ def row_offsets(canvas: Canvas) -> RowOffsets:
     noisy = scatter > LINE_EXCESS * error and line_sd > 0.03
     threshold = max(JUMP * max(scatter, error), LEAST_JUMP)
     jumps = np.abs(first) > threshold
-    bands = _bands(profile, np.flatnonzero(jumps)) if jumps.any() else None
+    bands, doubtful = _bands(profile, np.flatnonzero(jumps)) if jumps.any() else (None, None)
     largest = float(np.abs(first[jumps]).max()) if jumps.any() else 0.0
-    return RowOffsets(lines if noisy else None, bands, line_sd, largest)
+    return RowOffsets(lines if noisy else None, bands, line_sd, largest, doubtful)
 
 
 def _differences(canvas: Canvas, step: int) -> list[FloatArray]:
@@ -118,10 +122,11 @@ def _integrated(differences: list[FloatArray], rows: int) -> FloatArray:
     return np.asarray(profile - profile.mean())
 
 
-def _bands(profile: FloatArray, jumps: NDArray[np.intp]) -> FloatArray:
+def _bands(profile: FloatArray, jumps: NDArray[np.intp]) -> tuple[FloatArray, NDArray[np.bool_]]:
     """What bands add to a straight line between the rows before and after them; 0 elsewhere."""
     rows = len(profile)
     bands = np.zeros(rows)
+    doubtful = np.zeros(rows, dtype=bool)
     done = 0
     for jump in jumps:
         if jump < done:
@@ -138,8 +143,12 @@ def _bands(profile: FloatArray, jumps: NDArray[np.intp]) -> FloatArray:
         span = np.arange(jump + 1, end)
         line = before + (after - before) * (span - jump) / (end - jump)
         bands[span] = profile[span] - line
+        # The tail of the decay goes on for as long again.
+        doubtful[max(0, jump - 1) : end + (end - jump)] = True
         done = end
-    return bands
+    if doubtful.mean() > MOST_DOUBTFUL:
+        doubtful = np.abs(bands) > np.quantile(np.abs(bands), 1 - MOST_DOUBTFUL)
+    return bands, doubtful
 
 
 def _lowpass(profile: FloatArray, reach: float) -> FloatArray:

@@ -23,6 +23,9 @@ SCATTERED = 0.4
 ORIENTATION_SHARE = 0.06
 
 
+ROW_ERROR = 0.05
+
+
 @dataclass(frozen=True, eq=False)
 class Settled:
     """Everything that depends on the labels."""
@@ -151,6 +154,9 @@ def _cluster(
 ) -> Cluster:
     mean, se = float(measured.mean[label]), float(measured.se[label])
     sd = float(measured.sd[label])
+    if found.shading.lines is not None:
+        # Row offsets are known to some hundredths of the noise, and are common to all of a row.
+        se = float(np.hypot(se, ROW_ERROR * found.noise.sd(mean)))
     notes = []
     if label in specks:
         mean, se = specks[label]
@@ -162,7 +168,10 @@ def _cluster(
     if label not in specks and not void:
         scatter = float(measured.scatter[label])
         if scatter > 0.3 * noise_sd and scatter > 2.0 * se / np.sqrt(2):
-            notes.append(f"its regions differ by {scatter:.2g} levels more than noise explains")
+            notes.append(
+                f"its regions differ by {scatter:.2g} levels more than noise explains; phases less than "
+                f"{2 * scatter:.2g} levels apart cannot be told from one another in it"
+            )
     clipped = measured.clipped(label)
     if clipped:
         share = measured.low[label] if clipped == "low" else measured.high[label]
