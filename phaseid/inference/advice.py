@@ -20,6 +20,7 @@ Floats = NDArray[np.float64]
 # Effort of each kind of measurement relative to one X-ray point; common practice, changeable.
 COSTS: Mapping[str, float] = {
     "element": 1.0,
+    "spectrum": 1.0,
     "standard": 2.0,
     "energy": 2.0,
     "frames": 1.5,
@@ -43,7 +44,7 @@ class Measure:
     ----------
     cluster : int
         Index of the cluster.
-    kind : {"element", "standard", "energy", "frames", "diffraction"}
+    kind : {"spectrum", "element", "standard", "energy", "frames", "diffraction"}
     detail : str
         Element symbol, beam energy in keV, or empty.
     bits : float
@@ -150,22 +151,79 @@ def element_bits(ranking: Ranking, visible: Floats, k: int) -> Floats:
     return np.asarray(np.maximum(_binary_entropy(mixed) - inner, 0.0))
 
 
+def spectrum_bits(
+    ranking: Ranking, visible: Floats, k: int, left: NDArray[np.bool_], draws: int = 160
+) -> float:
+    """Expected information of a whole X-ray spectrum: which of all elements it shows.
+
+    Parameters
+    ----------
+    ranking : Ranking
+    visible : ndarray of shape (R, 103)
+    k : int
+    left : ndarray of bool, shape (103,)
+        Elements that are not answered yet.
+    draws : int
+        Spectra simulated; the same ones for the same ranking.
+
+    Returns
+    -------
+    float
+        Bits, by simulation: spectra are drawn from what the cluster can be, and the entropy that each
+        leaves is averaged.
+    """
+    rows, none = ranking.row_probability[k], float(ranking.none[k])
+    active = np.argsort(-rows, kind="stable")[:600]
+    active = active[rows[active] > 1e-6]
+    phases, place = np.unique(ranking.question.candidates.phase[active], return_inverse=True)
+    # "None of these" is an unknown phase: any phase of the databases may stand for its spectrum.
+    chance = np.vstack([visible[active], visible.mean(axis=0)])[:, left]
+    weight = np.append(rows[active], none)
+    generator = np.random.default_rng(k)
+    source = generator.choice(len(weight), size=draws, p=weight / weight.sum())
+    shown = generator.random((draws, chance.shape[1])) < chance[source]
+    fits = shown @ np.log(chance).T + ~shown @ np.log1p(-chance).T
+    joint = weight * np.exp(fits - fits.max(axis=1, keepdims=True))
+    index = np.append(place, len(phases))
+    by_phase = np.zeros((draws, len(phases) + 1))
+    np.add.at(by_phase.T, index, joint.T)
+    by_phase /= by_phase.sum(axis=1, keepdims=True)
+    after = -np.sum(by_phase * np.log2(np.maximum(by_phase, 1e-300)), axis=1).mean()
+    before = entropy_bits(np.bincount(index, weight) / weight.sum())
+    return max(before - float(after), 0.0)
+
+
 def _elements(ranking: Ranking, context: AdviceContext, k: int, most: int) -> list[Measure]:
     bits = element_bits(ranking, context.visible, k)
-    for symbol in context.asked.get(k, set()):
-        bits[SYMBOLS.index(symbol)] = 0.0
+    left = np.ones(len(bits), dtype=bool)
+    left[[SYMBOLS.index(symbol) for symbol in context.asked.get(k, set())]] = False
+    bits[~left] = 0.0
     best = np.argsort(-bits, kind="stable")[:most]
+    first = ", ".join(SYMBOLS[i] for i in best if bits[i] > LEAST_BITS)
+    whole = Measure(
+        k,
+        "spectrum",
+        "",
+        spectrum_bits(ranking, context.visible, k, left),
+        context.costs["spectrum"],
+        f"Take an X-ray spectrum of {context.labels[k]}; look for {first} first."
+        if first
+        else f"Take an X-ray spectrum of {context.labels[k]}.",
+    )
     cost = context.costs["element"]
     return [
-        Measure(
-            k,
-            "element",
-            SYMBOLS[i],
-            float(bits[i]),
-            cost,
-            f"Take an X-ray spectrum of {context.labels[k]}: does it show {SYMBOLS[i]}?",
-        )
-        for i in best
+        whole,
+        *(
+            Measure(
+                k,
+                "element",
+                SYMBOLS[i],
+                float(bits[i]),
+                cost,
+                f"Does the X-ray spectrum of {context.labels[k]} show {SYMBOLS[i]}?",
+            )
+            for i in best
+        ),
     ]
 
 

@@ -116,8 +116,13 @@ def test_advice_asks_for_what_separates(oxides):
     )
     measures = advise(answer, context)
     assert measures[0].cluster == 1
-    assert measures[0].kind == "element"
-    assert measures[0].detail in ("Fe", "Mg", "O")
+    assert measures[0].kind == "spectrum"
+    asked_first = next(m for m in measures if m.kind == "element")
+    assert asked_first.detail in ("Fe", "Mg", "O")
+    assert asked_first.detail in measures[0].text
+    # A whole spectrum tells at least what its best element tells, and no more than there is to know.
+    assert measures[0].bits >= asked_first.bits - 0.05
+    assert measures[0].bits <= entropy_bits(np.append(answer.probability[1], answer.none[1]))
     assert "the grey grains" in measures[0].text
     asked = AdviceContext(
         visibility(oxides),
