@@ -4,6 +4,9 @@ from __future__ import annotations
 
 import re
 
+import numpy as np
+from numpy.typing import NDArray
+
 from phaseid.phases.amounts import Amount, FormulaError, Values, arithmetic, fixed, variable
 from phaseid.phases.reader import Reading, read_formula
 from phaseid.phases.sums import Amounts
@@ -148,7 +151,9 @@ class _Mixture:
         )
 
     def _amounts(self, by_mass: bool) -> Amounts:
-        entries, masses, text = self.entries, atomic_masses(), self.text
+        masses, text = atomic_masses(), self.text
+        # Parts have no variables of their own, so what a share of each consists of is fixed.
+        entries = [(_shares(part({}), masses, by_mass), amount) for part, amount in self.entries]
 
         def total(values: Values) -> dict[str, float]:
             shares = [None if a is None else a.value(values) for _, a in entries]
@@ -159,14 +164,20 @@ class _Mixture:
                 )
             found: dict[str, float] = {}
             for (part, _), share in zip(entries, shares, strict=True):
-                atoms = part(values)
-                weighed = {
-                    s: n * (masses[SYMBOLS.index(s)] if by_mass else 1.0) for s, n in atoms.items()
-                }
-                whole = sum(weighed.values()) if by_mass else 1.0
-                for symbol, amount in weighed.items():
-                    part_share = (left if share is None else share) * amount / whole
-                    found[symbol] = found.get(symbol, 0.0) + part_share
+                amount = left if share is None else share
+                for symbol, count in part.items():
+                    found[symbol] = found.get(symbol, 0.0) + amount * count
             return found
 
         return total
+
+
+def _shares(
+    atoms: dict[str, float], masses: NDArray[np.float64], by_mass: bool
+) -> dict[str, float]:
+    """Mass shares of the elements in a part, or its atoms."""
+    if not by_mass:
+        return atoms
+    weighed = {s: n * float(masses[SYMBOLS.index(s)]) for s, n in atoms.items()}
+    whole = sum(weighed.values())
+    return {s: m / whole for s, m in weighed.items()}

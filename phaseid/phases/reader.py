@@ -15,7 +15,7 @@ from phaseid.phases.amounts import (
     variable,
 )
 from phaseid.phases.spelling import DOTS, VACANCIES, respelled
-from phaseid.phases.sums import Amounts, coupled, nothing, scaled_to, summed, times
+from phaseid.phases.sums import Amounts, Fixed, coupled, nothing, scaled_to, summed, times
 from phaseid.physics.elements import SYMBOLS
 
 _KNOWN = frozenset(SYMBOLS)
@@ -203,7 +203,7 @@ class _Reader:
             return _Part(nothing, None)
         symbol = self._symbol()
         self.elements.add(symbol)
-        return _Part(lambda values: {symbol: 1.0}, self._amount(symbol))
+        return _Part(Fixed({symbol: 1.0}), self._amount(symbol))
 
     def _symbol(self) -> str:
         rest = self.text[self.at :]

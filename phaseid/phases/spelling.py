@@ -45,6 +45,9 @@ _RULES: tuple[tuple[str, _Replacement], ...] = (
     (r"\s+", ""),
 )
 _SYMBOLS_INSIDE = re.compile(r"[A-Z][a-z]|[A-Z]\d|[A-Z]{2}|[A-Z]\s*[,(\[]")
+# Most formulas need none of this.
+_PLAIN = re.compile(r"[A-Za-z0-9(){}\[\]·+*/,-]*")
+_ODDITIES = re.compile(r"\([IV]|\d,\d")
 
 
 @dataclass(frozen=True)
@@ -66,6 +69,8 @@ def respelled(text: str) -> Spelled:
     -------
     Spelled
     """
+    if _PLAIN.fullmatch(text) and not _ODDITIES.search(text):
+        return Spelled(_brackets(text), tuple(range(len(text) + 1)))
     plain, positions = "", []
     for at, character in enumerate(text):
         found = _CHARACTERS.get(character, character)
@@ -92,6 +97,8 @@ def _replaced(
 
 def _brackets(text: str) -> str:
     """Braces around symbols are brackets, braces around arithmetic stay."""
+    if "{" not in text:
+        return text
     characters, open_at = list(text), []
     for at, character in enumerate(text):
         if character == "{":

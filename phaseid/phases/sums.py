@@ -15,6 +15,8 @@ def coupled(
 ) -> tuple[Amounts, dict[str, tuple[float, float]]]:
     """Ranges whose beginnings and ends have one sum exchange what they count: Mg4.5-2.5 Fe0.5-2.5."""
     firsts, seconds = (sum(ends[i] for ends in written.values()) for i in (0, 1))
+    if not written:
+        return amounts, {}
     if len(written) < 2 or abs(firsts - seconds) > 1e-6:
         return amounts, {n: (min(ends), max(ends)) for n, ends in written.items()}
     shared = next(iter(written))
@@ -27,13 +29,26 @@ def coupled(
     return together, {shared: (0.0, 1.0)}
 
 
-def nothing(values: Values) -> dict[str, float]:
-    return {}
+class Fixed:
+    """Amounts that depend on nothing, worked out once."""
+
+    def __init__(self, counts: dict[str, float]) -> None:
+        self.counts = counts
+
+    def __call__(self, values: Values) -> dict[str, float]:
+        return self.counts
+
+
+nothing = Fixed({})
 
 
 def times(amounts: Amounts, amount: Amount | None) -> Amounts:
+    """Amounts multiplied by an amount; None for none written."""
     if amount is None:
         return amounts
+    if isinstance(amounts, Fixed) and not amount.variables:
+        factor = amount.value({})
+        return Fixed({symbol: factor * count for symbol, count in amounts.counts.items()})
 
     def scaled(values: Values) -> dict[str, float]:
         factor = amount.value(values)
@@ -43,12 +58,23 @@ def times(amounts: Amounts, amount: Amount | None) -> Amounts:
 
 
 def summed(parts: list[Amounts]) -> Amounts:
+    """Amounts added up; those that depend on nothing are added now."""
     if len(parts) == 1:
         return parts[0]
+    constant: dict[str, float] = {}
+    varying = []
+    for part in parts:
+        if isinstance(part, Fixed):
+            for symbol, count in part.counts.items():
+                constant[symbol] = constant.get(symbol, 0.0) + count
+        else:
+            varying.append(part)
+    if not varying:
+        return Fixed(constant)
 
     def total(values: Values) -> dict[str, float]:
-        found: dict[str, float] = {}
-        for part in parts:
+        found = dict(constant)
+        for part in varying:
             for symbol, count in part(values).items():
                 found[symbol] = found.get(symbol, 0.0) + count
         return found

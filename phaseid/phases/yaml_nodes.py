@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
@@ -9,6 +10,10 @@ from typing import Any
 from phaseid.errors import InputError
 
 LARGEST_BYTES = 8_000_000
+
+
+# Where an anchor, alias or tag could begin; inside words and arithmetic none can.
+_EXPANDING = re.compile(r"(?<![\w)\]}])[&*!]")
 
 
 @dataclass(frozen=True)
@@ -77,9 +82,12 @@ def read_yaml(path: Path) -> Node:
 def _parsed(text: str, path: Path) -> Node:
     import yaml
 
-    loader = getattr(yaml, "CSafeLoader", yaml.SafeLoader)
+    fast = getattr(yaml, "CSafeLoader", yaml.SafeLoader)
+    # Scalars stay text, so nothing has to guess their types.
+    loader = type("Text", (fast,), {"yaml_implicit_resolvers": {}})
     try:
-        _refuse_expansion(text, loader, path)
+        if _EXPANDING.search(text):
+            _refuse_expansion(text, loader, path)
         node = yaml.compose(text, Loader=loader)
     except yaml.YAMLError as error:
         mark = getattr(error, "problem_mark", None)
