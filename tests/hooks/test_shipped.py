@@ -3,17 +3,20 @@
 from __future__ import annotations
 
 import importlib
+import re
 from collections import Counter
+from pathlib import Path
 
 import numpy as np
 import pytest
 
 from phaseid.hooks.host import BUILT_IN, make_host
 from phaseid.hooks.specs import Situation
-from phaseid.hooks.testing import faults, situation_of, unknown_names
+from phaseid.hooks.testing import faults, host_of, situation_of, unknown_names
 from phaseid.phases.records import Phase
 from phaseid.physics.conditions import Conditions
 
+ROOT = Path(__file__).resolve().parents[2]
 FAMILIES = [
     "steel",
     "cast-iron",
@@ -180,3 +183,14 @@ def test_helpers_name_what_is_wrong():
     assert "no function marked" in faults(object())[0]
     assert isinstance(situation_of(["SiO2"]), Situation)
     assert np.isclose(situation_of(["SiO2"]).mean_atomic_number[0], 10.8, atol=0.1)
+
+
+def test_the_example_of_the_documentation_is_a_sound_plugin(knowledge, tmp_path):
+    text = (ROOT / "DEVELOPERS.md").read_text(encoding="utf-8")
+    example = tmp_path / "welds.py"
+    example.write_text(re.search(r"```python\n(.+?)```", text, re.DOTALL)[1], encoding="utf-8")
+    assert faults(example) == []
+    host = host_of(example)
+    assert unknown_names(host.coexistence(), knowledge.catalogue.index) == []
+    (context,) = host.contexts()
+    assert all(knowledge.catalogue.index(name) is not None for name in context.weights)
