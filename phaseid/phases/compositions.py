@@ -23,7 +23,7 @@ Floats = NDArray[np.float64]
 # Compositions a variable phase is represented by.
 VARIANTS = 9
 # Raised when the formula code changes what comes out of it.
-_VERSION = 2
+_VERSION = 3
 
 
 @dataclass(frozen=True)

@@ -19,7 +19,7 @@ Factors = list[list[dict[str, float]]]
 # Rounding in 1-x-y must not make a composition impossible.
 _TOLERANCE = 1e-9
 _POSITION = {symbol: i for i, symbol in enumerate(SYMBOLS)}
-_MOST_CORNERS = 512
+_MOST_CORNERS = 128
 _HALVINGS = 24
 
 
@@ -33,13 +33,13 @@ def points(reading: Reading, ranges: Ranges, wanted: int) -> list[Floats]:
         middle = _composition(reading, _at(reading, ranges, np.full(max(dimensions, 1), 0.5)))
         if middle is not None:
             return [middle]
-        wanted = max(wanted, 1)
     found: list[Floats] = []
-    for unit in _lattice(dimensions, wanted):
-        made = _composition(reading, _at(reading, ranges, unit))
-        if made is not None:
-            found.append(made)
-        if len(found) == wanted:
+    # More are tried only where some are impossible.
+    for tried in (wanted, 60 * wanted):
+        lattice = _lattice(dimensions, wanted if dimensions <= 1 else tried)
+        rows = _compositions(reading, [_at(reading, ranges, unit) for unit in lattice])
+        found = [row for row in rows if row is not None][:wanted]
+        if len(found) == wanted or dimensions <= 1:
             break
     return found
 
@@ -58,13 +58,11 @@ def corners(reading: Reading, ranges: Ranges) -> list[Floats]:
         [{f"{s}.{i}": float(i == j) for i in range(n)} for j in range(n)]
         for s, n in reading.splits.items()
     ]
+    choices = _choices(reading, factors)
     found: list[Floats] = []
-    for choice in _choices(reading, factors):
-        made = _composition(reading, _joined(factors, choice))
-        if made is not None:
-            found.append(made)
-        else:
-            found += _borders(reading, factors, choice)
+    rows = _compositions(reading, [_joined(factors, choice) for choice in choices])
+    for choice, made in zip(choices, rows, strict=True):
+        found += _borders(reading, factors, choice) if made is None else [made]
     return list({row.round(6).tobytes(): row for row in found}.values())
 
 
@@ -76,10 +74,15 @@ def _choices(reading: Reading, factors: Factors) -> list[tuple[int, ...]]:
     sizes = [len(f) for f in factors]
     if math.prod(sizes) <= _MOST_CORNERS:
         return list(itertools.product(*map(range, sizes)))
-    lightest, heaviest = _by_weight(reading, factors)
-    drawn = np.random.default_rng(0).integers(0, sizes, (_MOST_CORNERS - 2, len(sizes)))
-    chosen = [lightest, heaviest, *(tuple(int(c) for c in row) for row in drawn)]
-    return list(dict.fromkeys(chosen))
+    chosen = list(_by_weight(reading, factors))
+    # One against all others: most of one element is where the others are at their least.
+    for at, size in enumerate(sizes):
+        for c in range(size):
+            for others in ([0] * len(sizes), [n - 1 for n in sizes]):
+                chosen.append((*others[:at], c, *others[at + 1 :]))
+    drawn = np.random.default_rng(0).integers(0, sizes, (_MOST_CORNERS, len(sizes)))
+    chosen += [tuple(int(c) for c in row) for row in drawn]
+    return list(dict.fromkeys(chosen))[:_MOST_CORNERS]
 
 
 def _by_weight(reading: Reading, factors: Factors) -> tuple[tuple[int, ...], tuple[int, ...]]:
@@ -121,15 +124,15 @@ def _borders(reading: Reading, factors: Factors, choice: Sequence[int]) -> list[
     return found
 
 
-def _lattice(dimensions: int, wanted: int) -> Floats:
-    """Points in the unit cube; more than wanted, as some may be impossible."""
+def _lattice(dimensions: int, count: int) -> Floats:
+    """Points spread evenly in the unit cube (additive recurrence, Roberts 2018, from memory)."""
     if dimensions <= 1:
-        return ((np.arange(wanted) + 0.5) / wanted)[:, None]
+        return ((np.arange(count) + 0.5) / count)[:, None]
     ratio = 1.5
     for _ in range(40):
         ratio = (1.0 + ratio) ** (1.0 / (dimensions + 1))
     steps = ratio ** -np.arange(1, dimensions + 1)
-    unit: Floats = np.mod(0.5 + np.outer(np.arange(60 * wanted), steps), 1.0)
+    unit: Floats = np.mod(0.5 + np.outer(np.arange(count), steps), 1.0)
     return unit
 
 
@@ -153,14 +156,20 @@ def _at(reading: Reading, ranges: Ranges, unit: Floats) -> dict[str, float]:
 
 
 def _composition(reading: Reading, values: Mapping[str, float]) -> Floats | None:
+    return _compositions(reading, [values])[0]
+
+
+def _compositions(reading: Reading, values: Sequence[Mapping[str, float]]) -> list[Floats | None]:
     """Mass fractions, or None where an amount is negative or nothing is left."""
-    row = np.zeros(ELEMENT_COUNT)
-    for symbol, amount in reading.amounts(values).items():
-        row[_POSITION[symbol]] += amount
-    if row.min() < -_TOLERANCE or not np.isfinite(row).all():
-        return None
-    row = np.maximum(row, 0.0)
+    rows = np.zeros((len(values), ELEMENT_COUNT))
+    for row, one in zip(rows, values, strict=True):
+        for symbol, amount in reading.amounts(one).items():
+            row[_POSITION[symbol]] += amount
+    possible = (rows.min(axis=1) >= -_TOLERANCE) & np.isfinite(rows).all(axis=1)
+    rows = np.maximum(rows, 0.0)
     if not reading.by_mass:
-        row = row * atomic_masses()
-    total = row.sum()
-    return row / total if total > 0 else None
+        rows = rows * atomic_masses()
+    total = rows.sum(axis=1)
+    possible &= total > 0
+    rows[possible] /= total[possible, None]
+    return [row if ok else None for row, ok in zip(rows, possible, strict=True)]
