@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 from phaseid.hooks import hookimpl
-from phaseid.phases.contexts import Context
+from phaseid.phases.contexts import Coexistence, Context
 
 CONTEXTS = (
     Context("aluminium-alloy", "Aluminium alloy", "Aluminium matrix with intermetallics."),
@@ -66,7 +66,46 @@ CONTEXTS = (
     ),
 )
 
+COEXISTENCE = (
+    Coexistence(
+        ("Eutectic silicon",),
+        ("beta-Aluminium-magnesium",),
+        0.1,
+        "Magnesium and silicon combine to Mg2Si, which leaves only one of them in excess (phase diagram "
+        "Al-Mg-Si; Mondolfo 1976, Aluminum Alloys).",
+        ("aluminium-alloy",),
+    ),
+    Coexistence(
+        ("theta-Aluminium-copper",),
+        ("beta-Aluminium-magnesium",),
+        0.1,
+        "S and T phases lie between them (phase diagram Al-Cu-Mg; Mondolfo 1976, Aluminum Alloys).",
+        ("aluminium-alloy",),
+    ),
+    Coexistence(
+        ("theta-Aluminium-iron",),
+        ("Eutectic silicon",),
+        0.3,
+        "Silicon turns Al13Fe4 into alpha- and beta-AlFeSi; it survives only where cooling was fast (phase "
+        "diagram Al-Fe-Si; Mondolfo 1976, Aluminum Alloys).",
+        ("aluminium-alloy",),
+    ),
+    Coexistence(
+        ("Zirconium core (magnesium)",),
+        ("beta-Magnesium aluminium", "Aluminium manganese Al8Mn5"),
+        0.1,
+        "Zirconium refines only magnesium free of aluminium and manganese, with which it settles out "
+        "(common practice).",
+        ("magnesium-alloy",),
+    ),
+)
+
 
 @hookimpl
 def register_contexts() -> Sequence[Context]:
     return CONTEXTS
+
+
+@hookimpl
+def register_coexistence() -> Sequence[Coexistence]:
+    return COEXISTENCE
