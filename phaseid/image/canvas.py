@@ -67,7 +67,7 @@ class Canvas:
         """Tiles of about 480 pixels that cover the image."""
         rows, columns = self.data.shape
         starts = [_cuts(n) for n in (rows, columns)]
-        tiles = []
+        tiles: list[Tile] = []
         for r0, r1 in starts[0]:
             for c0, c1 in starts[1]:
                 top, left = min(MARGIN, rows - 1), min(MARGIN, columns - 1)

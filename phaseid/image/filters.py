@@ -43,6 +43,21 @@ def _along_columns(image: FloatImage, hole: int) -> FloatImage:
     return out
 
 
+def gathered(count: NDArray[np.uint16], hole: int) -> NDArray[np.uint16]:
+    """Sixteen times one step of smoothing, in integers; the frame repeats its outermost pixels."""
+    down = count << np.uint16(2)
+    inner = down[hole:-hole]
+    np.left_shift(count[hole:-hole], np.uint16(1), out=inner)
+    inner += count[: -2 * hole]
+    inner += count[2 * hole :]
+    both = down << np.uint16(2)
+    inner = both[:, hole:-hole]
+    np.left_shift(down[:, hole:-hole], np.uint16(1), out=inner)
+    inner += down[:, : -2 * hole]
+    inner += down[:, 2 * hole :]
+    return both
+
+
 def pyramid(image: FloatImage, steps: int) -> list[FloatImage]:
     """The image and its smoothed versions after 1, 2, ... steps."""
     levels = [image]

@@ -57,7 +57,7 @@ class FlatCounts:
 
     def centres(self, step: int) -> NDArray[np.float64]:
         """Middle of each bin."""
-        return self.low + (np.arange(len(self.counts[step])) + 0.5) * self.width[step]
+        return np.asarray(self.low + (np.arange(len(self.counts[step])) + 0.5) * self.width[step])
 
     def bluntness(self) -> float:
         """Entropy of the flat greys, less the logarithm of their share: lower is sharper.

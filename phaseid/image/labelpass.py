@@ -49,8 +49,9 @@ class Evidence:
     @classmethod
     def empty(cls, labels: int) -> Evidence:
         """Nothing seen yet."""
-        one, two = (labels,), (labels, labels)
-        return cls(*(np.zeros(one) for _ in range(4)), *(np.zeros(two) for _ in range(4)))
+        one = [np.zeros(labels) for _ in range(4)]
+        two = [np.zeros((labels, labels)) for _ in range(4)]
+        return cls(one[0], one[1], one[2], one[3], two[0], two[1], two[2], two[3])
 
     def add(self, other: Evidence) -> None:
         """Add what was seen elsewhere."""

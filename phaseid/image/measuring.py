@@ -192,7 +192,7 @@ def _table(
         return table
 
     def total(values: NDArray[Any]) -> FloatArray:
-        return np.bincount(region, weights=values, minlength=count)
+        return np.bincount(region, weights=values, minlength=count).astype(np.float64)
 
     n = runs.pixels.astype(float)
     middle = (runs.start + runs.stop - 1) / 2
@@ -260,7 +260,7 @@ def _by_label(
     label = runs.label
 
     def total(values: NDArray[Any]) -> FloatArray:
-        return np.bincount(label, weights=values, minlength=256)
+        return np.bincount(label, weights=values, minlength=256).astype(np.float64)
 
     pixels, interior = total(runs.pixels), total(sums[0])
     # A cluster without any interior is measured on what it has.

@@ -146,7 +146,7 @@ def _differences(blocks: FloatArray) -> tuple[FloatArray, FloatArray]:
 def _quiet(part: NDArray[np.intp], rows: FloatArray, columns: FloatArray) -> NDArray[np.intp]:
     near = rows[0, part] + columns[0, part]
     limit = ACCEPTED * float(np.quantile(near, QUANTILE))
-    return part[near <= limit]
+    return np.asarray(part[near <= limit], dtype=np.intp)
 
 
 def _full_variance(rows: FloatArray, columns: FloatArray) -> float:

@@ -110,7 +110,8 @@ def sort_specks(
     if not round_ones:
         return Sorted((), dark, bright, (), drawn)
     own, error = _greys(round_ones, position, blur_px, height_se, span)
-    phases, alone = [], []
+    phases: list[RarePhase] = []
+    alone: list[Speck] = []
     for members in _groups(own, error, np.array([s.pixels for s in round_ones], float)):
         chosen = tuple(round_ones[i] for i in members)
         pixels = sum(s.pixels for s in chosen)

@@ -10,6 +10,7 @@ from numpy.typing import NDArray
 
 from phaseid.errors import InputError
 from phaseid.image.clusters import Cluster, Components
+from phaseid.image.components import fit_components
 from phaseid.image.counting import grey_counts, range_ends
 from phaseid.image.deciding import channelled, finding_of, populations, void_labels
 from phaseid.image.finding_clusters import Found
@@ -88,11 +89,7 @@ def settle(image: GreyImage, found: Found) -> Settled:
     voids = sum(c.area_fraction for c in clusters if c.kind == "void")
     if voids and found.automatic:
         warnings.append(finding_of("pores", voids))
-    mixture = Components(
-        np.array([c.weight for c in clusters]),
-        np.array([c.grey_mean for c in clusters]),
-        np.array([c.component_sd for c in clusters]),
-    )
+    mixture = fit_components(histogram, clusters, found.noise, ends)
     return Settled(clusters, labels, measured.edge, histogram, mixture, tuple(warnings), regions)
 
 

@@ -74,7 +74,9 @@ class Shading:
 def legendre(at: NDArray[Any], length: int, order: int) -> FloatArray:
     """Legendre polynomials 0 to `order` over 0..length-1, shape (order + 1, len(at))."""
     x = 2.0 * np.asarray(at, dtype=float) / max(length - 1, 1) - 1.0
-    return np.polynomial.legendre.legvander(np.clip(x, -1.2, 1.2), order).T
+    return np.asarray(
+        np.polynomial.legendre.legvander(np.clip(x, -1.2, 1.2), order).T, dtype=np.float64
+    )
 
 
 def slope_terms(

@@ -66,7 +66,7 @@ def _jumps(data: NDArray[Any], sd: float) -> list[int]:
         if found and row - found[-1] <= 8:
             continue
         # A border between phases is a step of one sign along the row; a join has both.
-        step = thin[min(row + 3, rows - 1)] - thin[max(row - 3, 0)]
+        step = thin[min(int(row) + 3, rows - 1)] - thin[max(int(row) - 3, 0)]
         sign = np.sign(step[np.abs(step) > 5.0 * max(sd, 0.5)])
         if len(sign) and min(np.mean(sign > 0), np.mean(sign < 0)) > 0.1:
             found.append(int(row))
