@@ -2,28 +2,21 @@
 
 from __future__ import annotations
 
-import hashlib
-import io
-import os
-import zipfile
 from collections.abc import Sequence
 from dataclasses import dataclass
-from pathlib import Path
 
 import numpy as np
 from numpy.typing import NDArray
 
-import phaseid
-from phaseid.errors import InputError
-from phaseid.files import write_bytes
 from phaseid.phases.records import Phase
+from phaseid.phases.stored import Arrays, cache_folder, key_of, stored
+
+__all__ = ["Compositions", "cache_folder", "composition_key", "compositions", "work_out"]
 
 Floats = NDArray[np.float64]
 
 # Compositions a variable phase is represented by.
 VARIANTS = 9
-# Raised when the formula code changes what comes out of it.
-_VERSION = 3
 
 
 @dataclass(frozen=True)
@@ -81,45 +74,20 @@ def work_out(phases: Sequence[Phase]) -> Compositions:
 
 
 def compositions(phases: Sequence[Phase]) -> Compositions:
-    """As `work_out`, kept on disk by content and version.
+    """As `work_out`, kept on disk by content and version."""
+    names = Compositions.__dataclass_fields__
 
-    A cache that cannot be read is made anew; one that cannot be written is done without. Files are
-    written in one step, so two processes that start together cannot harm each other.
-    """
-    path = cache_folder() / f"compositions-{_key(phases)}.npz"
-    try:
-        with np.load(path, allow_pickle=False) as stored:
-            return Compositions(*(stored[name] for name in Compositions.__dataclass_fields__))
-    except (OSError, ValueError, KeyError, zipfile.BadZipFile, EOFError):
+    def make() -> Arrays:
         made = work_out(phases)
-    stream = io.BytesIO()
-    np.savez_compressed(stream, **{n: getattr(made, n) for n in Compositions.__dataclass_fields__})
-    try:
-        write_bytes(path, stream.getvalue())
-        _tidy(path.parent)
-    except (InputError, OSError):
-        pass
-    return made
+        return {name: getattr(made, name) for name in names}
+
+    found = stored("compositions", composition_key(phases), make)
+    if set(found) != set(names):
+        return work_out(phases)
+    return Compositions(**found)  # type: ignore[arg-type]
 
 
-def cache_folder() -> Path:
-    """Where derived values are kept: PHASEID_CACHE, or the user's cache folder."""
-    told = os.environ.get("PHASEID_CACHE")
-    if told:
-        return Path(told)
-    import platformdirs
-
-    return platformdirs.user_cache_path("phaseid")
-
-
-def _key(phases: Sequence[Phase]) -> str:
-    digest = hashlib.sha256(f"{phaseid.__version__}/{_VERSION}/{VARIANTS}".encode())
-    for phase in phases:
-        digest.update(repr((phase.formula, sorted(phase.ranges.items()))).encode())
-    return digest.hexdigest()[:32]
-
-
-def _tidy(folder: Path, most: int = 12) -> None:
-    files = sorted(folder.glob("compositions-*.npz"), key=lambda f: f.stat().st_mtime)
-    for old in files[:-most]:
-        old.unlink(missing_ok=True)
+def composition_key(phases: Sequence[Phase]) -> str:
+    """Key of all that the compositions of phases depend on."""
+    content = repr([(p.formula, sorted(p.ranges.items())) for p in phases])
+    return key_of(str(VARIANTS), content)

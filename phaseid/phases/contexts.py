@@ -154,7 +154,8 @@ class ContextTree:
             )
         last = {p.rsplit("/", 1)[-1]: p for p in self._by_path}
         near = difflib.get_close_matches(wanted, [*self._by_path, *last], n=3, cutoff=0.5)
-        hint = f" Did you mean {', '.join(last.get(n, n) for n in near)}?" if near else ""
+        meant = dict.fromkeys(last.get(n, n) for n in near)
+        hint = f" Did you mean {', '.join(meant)}?" if meant else ""
         raise InputError(f"No context is called {name!r}; see 'phaseid plugins contexts'.{hint}")
 
     def weights(self, contexts: Sequence[str], phases: Sequence[Phase]) -> Floats:

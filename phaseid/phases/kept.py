@@ -7,15 +7,12 @@ import json
 from dataclasses import asdict, replace
 from pathlib import Path
 
-import phaseid
 from phaseid.errors import InputError
 from phaseid.files import write_text
-from phaseid.phases.compositions import cache_folder
 from phaseid.phases.database import Database, load
 from phaseid.phases.records import Phase
+from phaseid.phases.stored import cache_folder, key_of
 
-# Raised when the meaning of what is kept changes.
-_VERSION = 1
 _MOST = 60
 
 
@@ -32,7 +29,7 @@ def load_kept(path: Path | str) -> Database:
         digest = hashlib.sha256(path.read_bytes()).hexdigest()
     except OSError:
         return load(path)
-    key = hashlib.sha256(f"{digest}/{phaseid.__version__}/{_VERSION}".encode()).hexdigest()[:32]
+    key = key_of(digest)
     store = cache_folder() / f"database-{key}.json"
     kept = _read(store, path)
     if kept is not None:

@@ -9,8 +9,14 @@ from typing import TYPE_CHECKING
 import numpy as np
 from numpy.typing import NDArray
 
-from phaseid.phases.compositions import Compositions, compositions, work_out
+from phaseid.phases.compositions import (
+    Compositions,
+    composition_key,
+    compositions,
+    work_out,
+)
 from phaseid.phases.records import Phase
+from phaseid.phases.stored import Arrays, key_of, stored
 from phaseid.physics.averaging import mean_atomic_number
 from phaseid.physics.conditions import Conditions
 from phaseid.physics.depth import electron_range_um, information_depth_um
@@ -21,6 +27,8 @@ if TYPE_CHECKING:
     import pandas as pd
 
 Floats = NDArray[np.float64]
+
+_BY_ROW = ("signal", "own_sd", "eta")
 
 
 @dataclass(frozen=True)
@@ -91,7 +99,8 @@ def build(phases: Sequence[Phase], conditions: Conditions, *, cached: bool = Tru
     phases : sequence of Phase
     conditions : Conditions
     cached : bool
-        Whether compositions are kept on disk between runs.
+        Whether compositions and signals are kept on disk between runs; signals of a model or rule that
+        is given as an object, not by name, are not.
 
     Returns
     -------
@@ -105,15 +114,17 @@ def build(phases: Sequence[Phase], conditions: Conditions, *, cached: bool = Tru
     phases = tuple(phases)
     rows = compositions(phases) if cached else work_out(phases)
     count = len(phases)
-    error = model_error(rows.mass_fractions, conditions)
-    row_signal = signal_under(rows.mass_fractions, conditions)
-    row_eta = eta(
-        rows.mass_fractions,
-        conditions.energy_keV,
-        conditions.tilt_deg,
-        conditions.model,
-        conditions.rule,
-    )
+    told = isinstance(conditions.model, str) and isinstance(conditions.rule, str)
+    if cached and told:
+        key = key_of(composition_key(phases), repr(conditions))
+        physics = stored("signals", key, lambda: _physics(rows, conditions))
+        # What another process left half-way is not what is wanted.
+        if any(physics.get(n, np.zeros(0)).shape != rows.phase.shape for n in _BY_ROW):
+            physics = _physics(rows, conditions)
+    else:
+        physics = _physics(rows, conditions)
+    row_signal, own_sd, row_eta = (np.asarray(physics[n], dtype=float) for n in _BY_ROW)
+    relative_sd, length = (float(v) for v in np.asarray(physics["smooth"], dtype=float))
     ends = mean_atomic_number(
         np.concatenate([rows.corner_mass_fractions, rows.mass_fractions]), "mass"
     )
@@ -121,17 +132,19 @@ def build(phases: Sequence[Phase], conditions: Conditions, *, cached: bool = Tru
     lowest, highest = np.full(count, np.inf), np.full(count, -np.inf)
     np.minimum.at(lowest, owner, ends)
     np.maximum.at(highest, owner, ends)
-    mean_composition = np.zeros((count, rows.mass_fractions.shape[1]))
-    np.add.at(mean_composition, rows.phase, rows.share[:, None] * rows.mass_fractions)
+    # Rows stand in the order of their phases, and every phase has one.
+    starts = np.searchsorted(rows.phase, np.arange(count))
+    shares = rows.share[:, None] * rows.mass_fractions
+    mean_composition = np.add.reduceat(shares, starts) if count else shares
     density = np.array([np.nan if p.density is None else p.density for p in phases])
     return PhaseTable(
         phases,
         conditions,
         rows,
         row_signal,
-        error.own_sd,
-        error.relative_sd,
-        error.length,
+        own_sd,
+        relative_sd,
+        length,
         _by_phase(rows, mean_atomic_number(rows.mass_fractions, "mass"), count),
         lowest,
         highest,
@@ -140,6 +153,22 @@ def build(phases: Sequence[Phase], conditions: Conditions, *, cached: bool = Tru
         _depth(electron_range_um, mean_composition, density, conditions),
         _depth(information_depth_um, mean_composition, density, conditions),
     )
+
+
+def _physics(rows: Compositions, conditions: Conditions) -> Arrays:
+    error = model_error(rows.mass_fractions, conditions)
+    return {
+        "signal": signal_under(rows.mass_fractions, conditions),
+        "own_sd": np.asarray(error.own_sd),
+        "eta": eta(
+            rows.mass_fractions,
+            conditions.energy_keV,
+            conditions.tilt_deg,
+            conditions.model,
+            conditions.rule,
+        ),
+        "smooth": np.array([error.relative_sd, error.length]),
+    }
 
 
 def _by_phase(rows: Compositions, values: Floats, count: int) -> Floats:

@@ -2,6 +2,10 @@
 
 from __future__ import annotations
 
+import os
+import subprocess
+import sys
+
 import numpy as np
 import pytest
 
@@ -126,3 +130,46 @@ def test_listing_document_has_its_fields():
         "name", "other_names", "formula", "database", "density", "elements", "mean_atomic_number",
         "mean_atomic_number_min", "mean_atomic_number_max", "eta", "contexts", "hazard", "source",
     }  # fmt: skip
+
+
+def test_kept_signals_equal_fresh_ones_and_follow_conditions_and_phases(monkeypatch):
+    fresh = build(PHASES, Conditions(energy_keV=17.0), cached=False)
+    for _ in range(2):
+        kept = build(PHASES, Conditions(energy_keV=17.0))
+        np.testing.assert_array_equal(kept.row_signal, fresh.row_signal)
+        np.testing.assert_array_equal(kept.row_own_sd, fresh.row_own_sd)
+        np.testing.assert_array_equal(kept.eta, fresh.eta)
+        assert (kept.relative_sd, kept.length) == (fresh.relative_sd, fresh.length)
+    other = build(PHASES, Conditions(energy_keV=12.0))
+    assert not np.allclose(other.row_signal, fresh.row_signal)
+    fewer = build(PHASES[1:], Conditions(energy_keV=17.0))
+    assert fewer.row_signal.shape == fewer.rows.phase.shape
+    # The second time nothing is worked out.
+    monkeypatch.setattr("phaseid.phases.table._physics", None)
+    np.testing.assert_array_equal(
+        build(PHASES, Conditions(energy_keV=17.0)).row_signal, fresh.row_signal
+    )
+    monkeypatch.undo()
+    for file in cache_folder().glob("signals-*.npz"):
+        file.write_bytes(file.read_bytes()[:200])
+    np.testing.assert_array_equal(
+        build(PHASES, Conditions(energy_keV=17.0)).row_signal, fresh.row_signal
+    )
+
+
+def test_two_processes_may_start_at_once(tmp_path):
+    code = (
+        "from phaseid.phases.records import Phase; from phaseid.phases.table import build;"
+        "from phaseid.physics.conditions import Conditions;"
+        "t = build([Phase('A', '(Mg,Fe)O', 's'), Phase('B', 'Au', 's')], Conditions());"
+        "print(t.row_signal.sum())"
+    )
+    environment = {**os.environ, "PHASEID_CACHE": str(tmp_path)}
+    running = [
+        subprocess.Popen([sys.executable, "-c", code], env=environment, stdout=subprocess.PIPE)
+        for _ in range(2)
+    ]
+    told = [p.communicate(timeout=60)[0] for p in running]
+    assert told[0] == told[1] != b""
+    # Both wrote the same files, and nothing half-written is left beside them.
+    assert sorted(p.name.split("-")[0] for p in tmp_path.iterdir()) == ["compositions", "signals"]
