@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import ast
 import re
+import shlex
 import subprocess
 import sys
 import tomllib
@@ -130,3 +131,25 @@ def test_readme_commands_are_what_ci_runs():
     assert second is not None
     assert "pytest" in second[1]
     assert "second command" in (ROOT / ".ci/run").read_text("utf-8")
+
+
+def test_first_command_of_the_readme_does_the_main_job(tmp_path):
+    readme = (ROOT / "README.md").read_text("utf-8")
+    first = re.search(r"<!-- first command -->\s*```sh\n(.+?)\n```", readme, re.DOTALL)
+    assert first is not None
+    steps = [step.strip() for step in first[1].split("&&")]
+    assert steps[:2] == ["python3 -m venv .venv", ".venv/bin/pip install -q ."]
+    name, *arguments = shlex.split(steps[2])
+    assert name == ".venv/bin/phaseid"
+    arguments[arguments.index("--out") + 1] = str(tmp_path)
+    done = subprocess.run(
+        [Path(sys.executable).parent / "phaseid", *arguments],
+        cwd=ROOT,
+        capture_output=True,
+        text=True,
+        check=False,
+    )
+    assert done.returncode == 0, done.stderr
+    assert {"candidates.json", "candidates.csv", "labels.tif"} <= {
+        p.name for p in tmp_path.iterdir()
+    }

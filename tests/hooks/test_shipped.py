@@ -10,6 +10,7 @@ from pathlib import Path
 import numpy as np
 import pytest
 
+from phaseid.errors import InputError
 from phaseid.hooks.host import BUILT_IN, make_host
 from phaseid.hooks.specs import Situation
 from phaseid.hooks.testing import faults, host_of, situation_of, unknown_names
@@ -96,6 +97,12 @@ def test_every_last_part_is_found_by_itself_unless_it_is_shared(knowledge):
         name = path.rsplit("/", 1)[-1]
         if last[name] == 1 or name == path:
             assert tree.resolve(name).path == path
+
+
+def test_near_matches_are_told_once(knowledge):
+    with pytest.raises(InputError, match=r"Did you mean steel[,?]") as told:
+        knowledge.contexts.resolve("stel")
+    assert str(told.value).count("steel") == 1
 
 
 def test_databases_use_only_contexts_that_are_defined(knowledge):
