@@ -69,21 +69,21 @@ CONTEXTS = (
 COEXISTENCE = (
     Coexistence(
         ("Eutectic silicon",),
-        ("beta-Aluminium-magnesium",),
+        ("beta-Aluminium magnesium",),
         0.1,
         "Magnesium and silicon combine to Mg2Si, which leaves only one of them in excess (phase diagram "
         "Al-Mg-Si; Mondolfo 1976, Aluminum Alloys).",
         ("aluminium-alloy",),
     ),
     Coexistence(
-        ("theta-Aluminium-copper",),
-        ("beta-Aluminium-magnesium",),
+        ("theta-Aluminium copper",),
+        ("beta-Aluminium magnesium",),
         0.1,
         "S and T phases lie between them (phase diagram Al-Cu-Mg; Mondolfo 1976, Aluminum Alloys).",
         ("aluminium-alloy",),
     ),
     Coexistence(
-        ("theta-Aluminium-iron",),
+        ("Aluminium iron (silicon) Al13Fe4 particle",),
         ("Eutectic silicon",),
         0.3,
         "Silicon turns Al13Fe4 into alpha- and beta-AlFeSi; it survives only where cooling was fast (phase "
