@@ -70,8 +70,7 @@ class Canvas:
         tiles: list[Tile] = []
         for r0, r1 in starts[0]:
             for c0, c1 in starts[1]:
-                top, left = min(MARGIN, rows - 1), min(MARGIN, columns - 1)
-                inner = (slice(top, top + r1 - r0), slice(left, left + c1 - c0))
+                inner = (slice(MARGIN, MARGIN + r1 - r0), slice(MARGIN, MARGIN + c1 - c0))
                 tiles.append(Tile(slice(r0, r1), slice(c0, c1), inner, len(tiles)))
         return tiles
 
@@ -110,12 +109,7 @@ class Canvas:
         part = array[max(r0, 0) : min(r1, rows), max(c0, 0) : min(c1, columns)]
         pad = [(max(-r0, 0), max(r1 - rows, 0)), (max(-c0, 0), max(c1 - columns, 0))]
         if any(p for pair in pad for p in pair):
-            mode = (
-                "reflect"
-                if all(max(p) < n for p, n in zip(pad, part.shape, strict=True))
-                else "symmetric"
-            )
-            part = np.pad(part, pad, mode=mode)  # type: ignore[call-overload]
+            part = np.pad(part, pad, mode="reflect")
         return part
 
 

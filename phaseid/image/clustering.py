@@ -19,7 +19,7 @@ from phaseid.image.noise import NoiseLaw
 from phaseid.image.notices import Finding
 from phaseid.image.settled import settle
 from phaseid.image.shading import Shading
-from phaseid.image.smoothing import smoothed_greys
+from phaseid.image.smoothing import labelled_by, smoothed_greys
 
 __all__ = ["Cluster", "Clustering", "Progress", "cluster_image"]
 
@@ -102,7 +102,9 @@ class Clustering:
         InputError
             If the cluster does not exist or has not so many greys.
         """
-        return self._with(editing.split(self.labels, self._smooth(), id, parts, self._ids()))
+        smooth = self._smooth()
+        changed = editing.split(self.labels, smooth, id, parts, self._means(), self._labelled)
+        return self._with(changed)
 
     def move_boundary(self, a: int, b: int, grey: float) -> Clustering:
         """Divide the pixels of two clusters anew at a grey (of the locally averaged image).
@@ -112,10 +114,12 @@ class Clustering:
         InputError
             If a cluster does not exist or would be empty.
         """
-        mean = {c.id: c.grey_mean for c in self.clusters}
+        mean = self._means()
         if a in mean and b in mean and mean[a] > mean[b]:
             a, b = b, a
-        changed = editing.boundary_moved(self.labels, self._smooth(), a, b, grey, self._ids())
+        changed = editing.boundary_moved(
+            self.labels, self._smooth(), a, b, grey, mean, self._labelled
+        )
         return self._with(changed)
 
     def exclude(self, *areas: Area | NDArray[Any]) -> Clustering:
@@ -133,6 +137,12 @@ class Clustering:
 
     def _ids(self) -> list[int]:
         return [c.id for c in self.clusters]
+
+    def _means(self) -> dict[int, float]:
+        return {c.id: c.grey_mean for c in self.clusters}
+
+    def _labelled(self, greys: Sequence[float]) -> NDArray[np.uint8]:
+        return labelled_by(self.image.data, self.noise, self.shading, self.crop, greys)
 
     def _smooth(self) -> NDArray[np.float32]:
         return smoothed_greys(self.image.data, self.noise, self.shading, self.crop)

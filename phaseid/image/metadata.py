@@ -144,7 +144,10 @@ def _matches(
     """Pairs whose last part is one of the names, in the order of the names."""
     by_name: dict[str, list[tuple[str, Any, str]]] = {}
     for name, value, unit in pairs:
-        by_name.setdefault(_plain(name.rsplit("/", 1)[-1]), []).append((name, value, unit))
+        parts = name.rsplit("/", 2)
+        by_name.setdefault(_plain(parts[-1]), []).append((name, value, unit))
+        if len(parts) > 1:
+            by_name.setdefault(_plain("".join(parts[-2:])), []).append((name, value, unit))
     return [pair for name in names for pair in by_name.get(name, [])]
 
 
@@ -165,7 +168,8 @@ def _unit(value: Any, unit: str) -> str:
         return unit.strip().lower()
     if isinstance(value, str):
         matched = re.match(
-            r"\s*=?\s*[-+]?\d+(?:[.,]\d+)?(?:[eE][-+]?\d+)?\s*([a-zA-Zµμå°]+)", value
+            r"\s*=?\s*[-+]?\d+(?:[.,]\d+)?(?:[eE][-+]?\d+)?(?![eE]?[-+]?\d)\s*([a-zA-Zµμå°]+)(?![-+\d])",
+            value,
         )
         if matched:
             return matched.group(1).lower()

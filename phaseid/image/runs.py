@@ -13,6 +13,9 @@ from numpy.typing import NDArray
 
 IntArray = NDArray[np.int64]
 
+# Runs are broken at every so many columns, so that what varies slowly is constant along one.
+LONGEST = 64
+
 
 @dataclass(frozen=True, eq=False)
 class Runs:
@@ -57,7 +60,7 @@ def runs_of(labels: NDArray[np.uint8], first_row: int = 0) -> tuple[Runs, IntArr
     change = np.empty(flat.size, dtype=bool)
     change[0] = True
     np.not_equal(flat[1:], flat[:-1], out=change[1:])
-    change[::columns] = True
+    change.reshape(labels.shape)[:, ::LONGEST] = True
     begins = np.flatnonzero(change)
     ends = np.append(begins[1:], flat.size)
     label = flat[begins]
@@ -114,7 +117,14 @@ def regions_of(runs: Runs, columns: int) -> tuple[NDArray[np.int32], int]:
     lower = np.repeat(low, number) + offset
     same = runs.label[upper] == runs.label[lower]
     same &= runs.row[lower] == runs.row[upper] + 1
-    upper, lower = upper[same], lower[same]
+    # Runs broken at a block of columns go on in the next one.
+    beside = np.flatnonzero(
+        (runs.row[1:] == runs.row[:-1])
+        & (runs.start[1:] == runs.stop[:-1])
+        & (runs.label[1:] == runs.label[:-1])
+    )
+    upper = np.concatenate([upper[same], beside])
+    lower = np.concatenate([lower[same], beside + 1])
     graph = coo_array((np.ones(len(upper), dtype=np.int8), (upper, lower)), shape=(n, n))
     count, region = connected_components(graph, directed=False)
     first = np.full(count, n, dtype=np.int64)

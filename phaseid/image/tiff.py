@@ -140,7 +140,8 @@ def _whole(page: Any, path: Path) -> None:
 
 def _two_dimensional(data: NDArray[Any], page: Any) -> NDArray[Any]:
     """Bring channels last and drop axes of length one."""
-    data = np.squeeze(data)
+    while data.ndim > 2 and data.shape[0] == 1:
+        data = data[0]
     if data.ndim == 3 and data.shape[-1] not in (2, 3, 4) and data.shape[0] in (2, 3, 4):
         data = np.moveaxis(data, 0, -1)
     return data
