@@ -19,11 +19,11 @@ CONTEXTS = (
 
 COEXISTENCE = (
     Coexistence(
-        ("Ditungsten carbide",),
+        ("Eta carbide M6C (hard metal)", "Eta carbide M12C (hard metal)", "Ditungsten carbide"),
         ("Graphite",),
         0.05,
-        "W2C means too little carbon, graphite too much (phase diagram C-Co-W; "
-        "common practice in hard-metal control).",
+        "Eta carbide and W2C mean too little carbon, graphite too much (phase diagram C-Co-W; common "
+        "practice in hard-metal control).",
         ("hard-metal",),
     ),
 )
