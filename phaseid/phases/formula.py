@@ -24,6 +24,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass
+from functools import lru_cache
 
 import numpy as np
 from numpy.typing import NDArray
@@ -127,7 +128,13 @@ def parse(text: str, ranges: Mapping[str, tuple[float, float]] | None = None) ->
     FormulaError
         One sentence: what is wrong, at which character, and how to write it.
     """
-    ranges = dict(ranges or {})
+    given = {name: (float(ends[0]), float(ends[1])) for name, ends in (ranges or {}).items()}
+    return _parsed(text, tuple(sorted(given.items())))
+
+
+@lru_cache(maxsize=12_000)
+def _parsed(text: str, stated_ranges: tuple[tuple[str, tuple[float, float]], ...]) -> Formula:
+    ranges = dict(stated_ranges)
     shown = text if len(text) <= 60 else text[:57] + "..."
     if not text.strip():
         raise FormulaError("The formula is empty; write for example Fe3C or (Mg,Fe)2SiO4.")

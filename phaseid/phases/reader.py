@@ -23,6 +23,7 @@ _HYDROGEN = ("D",)
 _NUMBER = r"(?:\d+(?:\.\d+)?|\.\d+)"
 _LETTER = f"[{VARIABLE_LETTERS}]"
 _TERM = f"(?:{_NUMBER}?{_LETTER}|{_NUMBER})"
+_OPENING_AMOUNT = frozenset("0123456789." + VARIABLE_LETTERS)
 _GENERIC = {
     "HREE": "(Y,Dy,Yb)",
     "LREE": "(La,Ce,Nd)",
@@ -161,6 +162,8 @@ class _Reader:
         rest = self.text[self.at :]
         if rest.startswith("{"):
             return self._braces()
+        if rest[:1] not in _OPENING_AMOUNT:
+            return None
         found = re.match(rf"({_NUMBER})-({_NUMBER})(?=[A-Z(\[])", rest)
         if found:
             self.at += found.end()
@@ -333,6 +336,8 @@ class _Reader:
         rest = self.text[self.at :]
         if rest.startswith("{"):
             return self._braces()
+        if rest[:1] not in _OPENING_AMOUNT and not rest.startswith("("):
+            return None
         expression = re.match(rf"(?:(?:{_TERM}[+-])+{_TERM}|{_NUMBER}?{_LETTER})(?![a-z])", rest)
         if expression and re.search(_LETTER, expression[0]):
             self.at += expression.end()
@@ -364,6 +369,8 @@ class _Reader:
 
     def _charge(self, symbol: str) -> None:
         rest = self.text[self.at :]
+        if "+" not in rest[:2] and "-" not in rest[:2]:
+            return
         repeated = re.match(r"\+{2,4}|--", rest)
         if repeated:
             self.at += repeated.end()

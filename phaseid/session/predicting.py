@@ -58,16 +58,29 @@ def prediction(
     knowledge = knowledge or Knowledge.load(state.databases)
     told = replace(state, energy_keV=state.energy_keV or DEFAULT_ENERGY_KEV)
     conditions, _ = settle(told, [], [], knowledge.model)
+    if not formulas:
+        raise InputError("There is no formula; give at least one, for example Fe3C.")
     phases = [_phase(text, knowledge, density) for text in formulas]
     table = build(phases, conditions, cached=False)
     from phaseid.physics.backscatter import eta_sd
 
     arguments = (conditions.energy_keV, conditions.tilt_deg)
     chosen = (*arguments, conditions.model, conditions.rule)
+    starts = np.searchsorted(table.rows.phase, np.arange(len(phases)))
+    compositions = np.add.reduceat(
+        table.rows.share[:, None] * table.rows.mass_fractions, starts, axis=0
+    )
+    # All at once: ten thousand formulas cost little more than one.
+    spreads = np.atleast_1d(eta_sd(compositions, *arguments))
+    energies = np.atleast_1d(mean_energy_keV(compositions, *chosen))
+    by_model = (
+        {m.name: eta(compositions, *arguments, m, conditions.rule) for m in knowledge.models()}
+        if every_model
+        else {}
+    )
     found = []
     for i, (text, phase) in enumerate(zip(formulas, phases, strict=True)):
-        mine = table.rows.phase == i
-        composition = table.rows.share[mine] @ table.rows.mass_fractions[mine]
+        composition = compositions[i]
         entry = {
             "input": text,
             "name": phase.name,
@@ -79,19 +92,16 @@ def prediction(
             "mean_atomic_number_min": _number(table.mean_atomic_number_min[i]),
             "mean_atomic_number_max": _number(table.mean_atomic_number_max[i]),
             "eta": _number(table.eta[i]),
-            "eta_sd": _number(eta_sd(composition, *arguments)),
+            "eta_sd": _number(spreads[i]),
             "signal": _number(table.signal[i]),
-            "mean_energy_keV": _number(mean_energy_keV(composition, *chosen)),
+            "mean_energy_keV": _number(energies[i]),
             "density": phase.density,
             "range_um": _number(table.range_um[i]),
             "information_depth_um": _number(table.information_depth_um[i]),
             "hazard": phase.hazard,
         }
         if every_model:
-            entry["eta_by_model"] = {
-                m.name: _number(eta(composition, *arguments, m, conditions.rule))
-                for m in knowledge.models()
-            }
+            entry["eta_by_model"] = {name: _number(v[i]) for name, v in by_model.items()}
         found.append(entry)
     coat = conditions.coat
     return {
