@@ -11,27 +11,27 @@ from numpy.typing import NDArray
 
 from phaseid.image.clusters import REGION_FIELDS
 from phaseid.image.filters import extreme_labels
+from phaseid.image.label_sums import BLOCK, LabelSums
 from phaseid.image.noise import NoiseLaw
-from phaseid.image.runs import Runs, joined, regions_of, runs_of
+from phaseid.image.region_sums import RegionSums, RunSums
+from phaseid.image.runs import Runs, runs_of
 from phaseid.image.shading import Shading
 
 FloatArray = NDArray[np.float64]
 
+# Rows at a time; a multiple of the block of `label_sums`.
 STRIP = 256
 # Pixels nearer to another label than this many standard deviations of the blur are blends.
 EDGE_BLURS = 2.5
 EDGE_LIMITS = (2, 6)
-# Error of any mean from borders drawn a little wrong, as a share of the pixel noise.
-SYSTEMATIC = 0.01
-# Greys of places this far apart are taken as independent of each other.
-BLOCK = 64
 # Above this share of cut-off pixels a mean is only a bound (common practice: about one per cent).
 CLIPPED_SHARE = 0.01
+SMALLEST_REGION = 12
 
 
 @dataclass(frozen=True, eq=False)
 class Measured:
-    """Sums over clusters, and the region table.
+    """Clusters by label, and the region table.
 
     Attributes
     ----------
@@ -42,7 +42,7 @@ class Measured:
         Standard deviation of the greys of regions beyond what the noise explains.
     regions : ndarray of REGION_FIELDS
     edge : ndarray of uint8
-        Packed bits, rows by rows.
+        Packed bits, row by row.
     """
 
     pixels: FloatArray
@@ -100,25 +100,22 @@ def measure(
     reach = int(np.clip(round(EDGE_BLURS * blur_px), *EDGE_LIMITS))
     rows, columns = data.shape
     packed = np.zeros((rows, -(-columns // 8)), dtype=np.uint8)
-    parts: list[Runs] = []
-    sums: list[FloatArray] = []
+    by_label, by_region = LabelSums(), RegionSums(columns)
     for first in range(0, rows, STRIP):
         last = min(first + STRIP, rows)
-        strip = labels[first:last]
         edge = _edges(labels, first, last, reach)
         if muted is not None:
             edge[_muted_rows(muted, offset, first, last)] = True
         packed[first:last] = np.packbits(edge, axis=1)
-        runs, begins = runs_of(strip, first)
-        parts.append(runs)
-        sums.append(_sums(data[first:last], strip, edge, begins, runs, ends))
+        runs, begins = runs_of(labels[first:last], first)
+        sums = _along_runs(data[first:last], edge, begins, runs, shading, offset)
+        by_label.add(runs, sums, columns // BLOCK + 1)
+        _add_pixels(by_label, data[first:last], labels[first:last], edge, ends)
+        by_region.add(runs, sums, first, last - 1)
         if progress is not None:
             progress(last / rows)
-    runs, total = joined(parts), np.concatenate(sums, axis=1)
-    region, count = regions_of(runs, columns)
-    by_run = _shading_at(runs, shading, offset)
-    table = _table(runs, total, region, count, by_run, noise, pixel_size_nm, data.shape)
-    return _by_label(runs, total, table, by_run, noise, packed, data.shape)
+    table = _table(by_region, noise, pixel_size_nm, data.shape)
+    return _measured(by_label, table, noise, packed)
 
 
 def _muted_rows(muted: NDArray[np.bool_], offset: int, first: int, last: int) -> NDArray[np.bool_]:
@@ -134,172 +131,114 @@ def _edges(labels: NDArray[np.uint8], first: int, last: int, reach: int) -> NDAr
     return np.asarray((low != high)[inner])
 
 
-def _sums(
+def _along_runs(
     data: NDArray[Any],
-    labels: NDArray[np.uint8],
     edge: NDArray[np.bool_],
     begins: NDArray[np.int64],
     runs: Runs,
-    ends: tuple[float | None, float | None],
-) -> FloatArray:
-    """Per run: interior pixels, sum and sum of squares of their greys, pixels at either end, all greys."""
+    shading: Shading,
+    offset: int,
+) -> RunSums:
     if not len(begins):
-        return np.zeros((6, 0))
-    flat = data.ravel()
-    inside = ~edge.ravel()
-    grey = flat.astype(np.float64)
+        return RunSums(*(np.zeros(0) for _ in range(4)))
     # Gaps (label 0) lie between runs: sum up to the end of each run only.
     cuts = np.stack([begins, begins + runs.pixels], axis=1).ravel()
-    inner = np.where(inside, grey, 0.0)
-    result = np.empty((6, len(begins)))
-    result[0] = _reduce(inside, cuts)
-    result[1] = _reduce(inner, cuts)
-    inner *= grey
-    result[2] = _reduce(inner, cuts)
-    low, high = ends
-    result[3] = 0.0 if low is None else _reduce((flat <= low) & inside, cuts)
-    result[4] = 0.0 if high is None else _reduce((flat >= high) & inside, cuts)
-    result[5] = _reduce(grey, cuts)
-    return result
+    inside = ~edge.ravel()
+    grey = data.ravel().astype(np.float64)
+    every = _reduced(grey, cuts)
+    grey *= inside
+    shade = np.zeros(len(begins))
+    if not shading.none:
+        shade = shading.at(runs.row - offset, (runs.start + runs.stop - 1) / 2)
+    return RunSums(_reduced(inside, cuts), _reduced(grey, cuts), every, shade)
 
 
-def _reduce(values: NDArray[Any], cuts: NDArray[np.int64]) -> FloatArray:
+def _reduced(values: NDArray[Any], cuts: NDArray[np.int64]) -> FloatArray:
     # reduceat needs every index inside; the last run may end at the very end.
     padded = np.append(values, values[-1:] * 0) if cuts[-1] == len(values) else values
-    return np.add.reduceat(padded, cuts, dtype=np.float64)[::2]
+    return np.asarray(np.add.reduceat(padded, cuts, dtype=np.float64)[::2])
 
 
-def _shading_at(runs: Runs, shading: Shading, offset: int) -> FloatArray:
-    """Shading at the middle of each run, in noise units."""
-    if shading.none:
-        return np.zeros(len(runs.row))
-    middle = (runs.start + runs.stop - 1) / 2
-    return shading.at(runs.row - offset, middle)
+def _add_pixels(
+    sums: LabelSums,
+    data: NDArray[Any],
+    labels: NDArray[np.uint8],
+    edge: NDArray[np.bool_],
+    ends: tuple[float | None, float | None],
+) -> None:
+    """What needs single pixels: squares, and those at the ends of the range."""
+    inner = ~edge & (labels > 0)
+    chosen, grey = labels[inner], data[inner].astype(np.float64)
+    sums.square += np.bincount(chosen, weights=grey * grey, minlength=256)
+    low, high = ends
+    if low is not None:
+        sums.low += np.bincount(chosen[grey <= low], minlength=256)
+    if high is not None:
+        sums.high += np.bincount(chosen[grey >= high], minlength=256)
 
 
 def _table(
-    runs: Runs,
-    sums: FloatArray,
-    region: NDArray[np.int32],
-    count: int,
-    shading: FloatArray,
-    noise: NoiseLaw,
-    pixel_size_nm: float | None,
-    shape: tuple[int, ...],
+    regions: RegionSums, noise: NoiseLaw, pixel_size_nm: float | None, shape: tuple[int, ...]
 ) -> NDArray[Any]:
-    table = np.zeros(count, REGION_FIELDS)
-    if not count:
+    sums, boxes, label = regions.joined()
+    table = np.zeros(len(label), REGION_FIELDS)
+    if not len(label):
         return table
-
-    def total(values: NDArray[Any]) -> FloatArray:
-        return np.bincount(region, weights=values, minlength=count).astype(np.float64)
-
-    n = runs.pixels.astype(float)
-    middle = (runs.start + runs.stop - 1) / 2
-    pixels = total(n)
-    interior = total(sums[0])
-    row, column = total(n * runs.row) / pixels, total(n * middle) / pixels
-    # Sum over a run of (column - mean)^2, in closed form.
-    across = total(n * (middle - column[region]) ** 2 + n * (n * n - 1) / 12) / pixels + 1 / 12
-    down = total(n * (runs.row - row[region]) ** 2) / pixels + 1 / 12
-    both = total(n * (runs.row - row[region]) * (middle - column[region])) / pixels
+    pixels, interior = sums["pixels"], sums["interior"]
+    row, column = sums["row"] / pixels, sums["column"] / pixels
+    down = sums["row_row"] / pixels - row**2 + 1 / 12
+    across = sums["column_column"] / pixels - column**2 + 1 / 12
+    both = sums["row_column"] / pixels - row * column
     root = np.sqrt((across - down) ** 2 / 4 + both**2)
     large, small = (across + down) / 2 + root, (across + down) / 2 - root
-    first = np.full(count, len(runs.row))
-    np.minimum.at(first, region, np.arange(len(runs.row)))
     enough = interior > 0
-    grey = np.where(enough, total(sums[1]) / np.maximum(interior, 1), total(sums[5]) / pixels)
-    weight = np.where(enough[region], sums[0], n)
-    tilt = total(weight * shading) / np.maximum(total(weight), 1e-9)
-    table["region"] = np.arange(1, count + 1)
-    table["cluster"] = runs.label[first]
-    table["pixels"] = pixels
-    table["interior_pixels"] = interior
+    n = np.where(enough, interior, pixels)
+    grey = np.where(enough, sums["grey_interior"], sums["grey_all"]) / n
+    tilt = np.where(enough, sums["shade_interior"], sums["shade_all"]) / n
+    size_um = np.nan if pixel_size_nm is None else pixel_size_nm / 1000
+    table["region"] = np.arange(1, len(label) + 1)
+    table["cluster"] = label
+    table["pixels"], table["interior_pixels"] = pixels, interior
     table["row"], table["column"] = row, column
     table["equivalent_diameter_px"] = np.sqrt(4 * pixels / np.pi)
-    size_um = np.nan if pixel_size_nm is None else pixel_size_nm / 1000
     table["equivalent_diameter_um"] = table["equivalent_diameter_px"] * size_um
     table["area_um2"] = pixels * size_um**2
     table["grey_mean"] = grey - tilt * noise.sd(grey)
-    effective = np.maximum(np.where(enough, interior, pixels) / noise.correlated_pixels, 1.0)
+    effective = np.maximum(n / noise.correlated_pixels, 1.0)
     table["grey_se"] = np.sqrt(noise.variance(grey) / effective)
     table["edge_share"] = 1.0 - interior / pixels
-    table["elongation"] = np.sqrt(large / np.maximum(small, 1e-9))
+    table["elongation"] = np.sqrt(np.maximum(large, 1 / 12) / np.maximum(small, 1 / 12))
     table["angle_deg"] = np.degrees(0.5 * np.arctan2(2 * both, across - down))
-    _boxes(table, runs, region, shape)
+    table["first_row"], table["first_column"] = boxes[:, 0], boxes[:, 2]
+    table["height"] = boxes[:, 1] - boxes[:, 0]
+    table["width"] = boxes[:, 3] - boxes[:, 2]
+    table["touches_frame"] = (
+        (boxes[:, 0] <= boxes[:, 0].min())
+        | (boxes[:, 1] >= boxes[:, 1].max())
+        | (boxes[:, 2] == 0)
+        | (boxes[:, 3] == shape[1])
+    )
     return table
 
 
-def _boxes(
-    table: NDArray[Any], runs: Runs, region: NDArray[np.int32], shape: tuple[int, ...]
-) -> None:
-    count = len(table)
-    top, bottom = np.full(count, shape[0]), np.zeros(count, dtype=np.int64)
-    left, right = np.full(count, shape[1]), np.zeros(count, dtype=np.int64)
-    np.minimum.at(top, region, runs.row)
-    np.maximum.at(bottom, region, runs.row + 1)
-    np.minimum.at(left, region, runs.start)
-    np.maximum.at(right, region, runs.stop)
-    table["first_row"], table["first_column"] = top, left
-    table["height"], table["width"] = bottom - top, right - left
-    used_top, used_bottom = int(runs.row.min()), int(runs.row.max()) + 1
-    table["touches_frame"] = (
-        (top <= used_top) | (bottom >= used_bottom) | (left == 0) | (right == shape[1])
-    )
-
-
-def _by_label(
-    runs: Runs,
-    sums: FloatArray,
-    table: NDArray[Any],
-    shading: FloatArray,
-    noise: NoiseLaw,
-    packed: NDArray[np.uint8],
-    shape: tuple[int, ...],
+def _measured(
+    sums: LabelSums, table: NDArray[Any], noise: NoiseLaw, packed: NDArray[np.uint8]
 ) -> Measured:
-    label = runs.label
-
-    def total(values: NDArray[Any]) -> FloatArray:
-        return np.bincount(label, weights=values, minlength=256).astype(np.float64)
-
-    pixels, interior = total(runs.pixels), total(sums[0])
-    # A cluster without any interior is measured on what it has.
-    thin = (interior < 1)[label]
-    n = np.where(thin, runs.pixels, sums[0])
-    grey = np.where(thin, sums[5], sums[1])
-    counted = np.maximum(total(n), 1.0)
-    raw = total(grey) / counted
-    # Take the shading off in grey units, run by run.
-    slant = shading * noise.sd(raw)[label]
-    flat = grey - n * slant
-    mean = total(flat) / counted
-    squares = np.where(thin, runs.pixels * raw[label] ** 2, sums[2])
-    square = total(squares - 2 * slant * grey + n * slant**2) / counted
-    sd = np.sqrt(np.maximum(square - mean**2, 0.0))
-    deviation = flat - n * mean[label]
-    block = (runs.row // BLOCK) * (shape[1] // BLOCK + 1) + (runs.start + runs.stop) // 2 // BLOCK
-    se, scatter = np.zeros(256), np.zeros(256)
-    for k in np.flatnonzero(pixels):
-        mine = label == k
-        by_block = np.bincount(block[mine], weights=deviation[mine])
-        blocks = max(int(np.count_nonzero(np.bincount(block[mine], weights=n[mine]))), 1)
-        # Few blocks underestimate the scatter; widen as Student's t would.
-        widen = np.sqrt(blocks / max(blocks - 1, 1)) * (1 + 2.0 / blocks)
-        between = widen * float(np.sqrt(np.sum(by_block**2))) / counted[k] if blocks > 1 else 0.0
-        chance = float(noise.sd(mean[k])) * np.sqrt(noise.correlated_pixels / counted[k])
-        regional, scatter[k] = _between_regions(table[table["cluster"] == k], mean[k])
-        # Borders drawn a little wrong leave an error that no number of pixels averages away.
-        fixed = SYSTEMATIC * float(noise.sd(mean[k]))
-        se[k] = max(float(np.hypot(max(between, chance, regional), fixed)), 1e-9)
-    share = np.maximum(interior, 1.0)
+    mean, sd = sums.means(noise)
+    se = sums.errors(noise)
+    scatter = np.zeros(256)
+    for k in np.flatnonzero(sums.pixels):
+        regional, scatter[k] = _between_regions(table[table["cluster"] == k], float(mean[k]))
+        se[k] = max(se[k], regional, 1e-9)
+    share = np.maximum(sums.interior, 1.0)
     return Measured(
-        pixels,
-        interior,
+        sums.pixels,
+        sums.interior,
         mean,
         sd,
         se,
-        total(sums[3]) / share,
-        total(sums[4]) / share,
+        sums.low / share,
+        sums.high / share,
         scatter,
         table,
         packed,
@@ -308,7 +247,7 @@ def _by_label(
 
 def _between_regions(table: NDArray[Any], mean: float) -> tuple[float, float]:
     """Standard error of the mean from the regions' scatter, and that scatter beyond the noise."""
-    table = table[table["interior_pixels"] >= 12]
+    table = table[table["interior_pixels"] >= SMALLEST_REGION]
     if len(table) < 2:
         return 0.0, 0.0
     weight = table["interior_pixels"] / table["interior_pixels"].sum()

@@ -14,7 +14,7 @@ from phaseid.image.notices import Finding
 LEAST_SHARE = 0.5
 LEAST_EXCESS = 0.25
 MARGIN = 0.08
-MOST_SAMPLES = 4096
+MOST_SAMPLES = 768
 
 
 def joins_of(data: NDArray[Any], noise: NoiseLaw) -> list[Finding]:

@@ -42,6 +42,7 @@ def test_measures_of_a_known_region() -> None:
     data = np.where(labels == 2, 200, 100).astype(np.uint8)
     found = measure(data, labels, NoiseLaw(4.0, 0.0), Shading((600, 80)), 0, (0.0, 255.0), 500.0)
     table = found.regions[found.regions["cluster"] == 2][0]
+    assert len(found.regions) == 2
     assert table["pixels"] == 800
     assert table["area_um2"] == pytest.approx(800 * 0.25)
     assert (table["row"], table["column"]) == (299.5, 39.5)
