@@ -7,6 +7,7 @@ from dataclasses import dataclass
 from typing import Literal
 
 import numpy as np
+from numpy.typing import NDArray
 
 from phaseid.phases.catalogue import fold
 from phaseid.phases.contexts import ContextTree
@@ -226,18 +227,29 @@ def odd_densities(phases: Sequence[Phase]) -> list[Finding]:
     known = [p for p in phases if p.density is not None]
     if len(known) < _ENOUGH:
         return []
+    rows = np.stack([p.parsed.mass_fractions() for p in known]) / atomic_masses()
+    # An atom takes up another volume in a metal than as an ion among oxygen.
+    salts = rows[:, _OXYGEN] / rows.sum(axis=1) > 0.2
+    found: list[Finding] = []
+    for group in (salts, ~salts):
+        alike = [known[int(i)] for i in np.flatnonzero(group)]
+        if len(alike) >= _ENOUGH:
+            found += _odd_ones(alike, rows[group])
+    return found
+
+
+def _odd_ones(alike: Sequence[Phase], rows: NDArray[np.float64]) -> list[Finding]:
     from scipy.optimize import nnls
 
-    density = np.array([p.density for p in known], dtype=float)
-    rows = np.stack([p.parsed.mass_fractions() for p in known]) / atomic_masses()
+    density = np.array([p.density for p in alike], dtype=float)
     # Weighted by density, so that the error is relative.
-    volumes, _ = nnls(rows * density[:, None], np.ones(len(known)))
+    volumes, _ = nnls(rows * density[:, None], np.ones(len(alike)))
     ratio = rows @ volumes * density
     common = (rows > 0).sum(axis=0) >= _OFTEN
     usual = ~np.any((rows > 0) & ~common, axis=1)
     return [
         _remark(
-            known[i],
+            alike[int(i)],
             f"a density of {density[i]:g} g/cm3 is far from {density[i] / ratio[i]:.2f}, which the other "
             "phases let expect; check it.",
         )
