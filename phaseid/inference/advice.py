@@ -134,17 +134,24 @@ def _binary_entropy(p: Floats) -> Floats:
     return np.asarray(-(p * np.log2(p) + (1 - p) * np.log2(1 - p)))
 
 
+def leading_rows(rows: Floats, most: int = 2500) -> NDArray[np.intp]:
+    """Rows that carry nearly all of a cluster's probability, in their own order."""
+    best = np.argsort(-rows, kind="stable")[:most]
+    kept = np.sort(best[rows[best] > 1e-6])
+    return kept if len(kept) else best[:1]
+
+
 def element_bits(ranking: Ranking, visible: Floats, k: int) -> Floats:
     """Expected information of "does the spectrum of cluster k show element X", shape (103,)."""
     rows, none = ranking.row_probability[k], float(ranking.none[k])
     candidates = ranking.question.candidates
-    # Rows of one phase share their identity, so the outcome is averaged within the phase first.
-    active = np.flatnonzero(rows > 1e-6)
-    phases, inverse = np.unique(candidates.phase[active], return_inverse=True)
-    share = np.zeros((len(phases), len(active)))
-    share[inverse, np.arange(len(active))] = rows[active]
-    weight = share.sum(axis=1)
-    outcome = (share @ visible[active]) / np.maximum(weight, 1e-300)[:, None]
+    # Rows of one phase share their identity, so the outcome is averaged within the phase first. Rows
+    # of a phase lie together, so the sums are over runs.
+    active = leading_rows(rows)
+    starts = np.flatnonzero(np.diff(candidates.phase[active], prepend=-1))
+    weight = np.add.reduceat(rows[active], starts)
+    outcome = np.add.reduceat(rows[active, None] * visible[active], starts, axis=0)
+    outcome /= weight[:, None]
     none_outcome = visible.mean(axis=0)
     mixed = weight @ outcome + none * none_outcome
     inner = weight @ _binary_entropy(outcome) + none * _binary_entropy(none_outcome)
@@ -173,8 +180,7 @@ def spectrum_bits(
         leaves is averaged.
     """
     rows, none = ranking.row_probability[k], float(ranking.none[k])
-    active = np.argsort(-rows, kind="stable")[:600]
-    active = active[rows[active] > 1e-6]
+    active = leading_rows(rows, 600)
     phases, place = np.unique(ranking.question.candidates.phase[active], return_inverse=True)
     # "None of these" is an unknown phase: any phase of the databases may stand for its spectrum.
     chance = np.vstack([visible[active], visible.mean(axis=0)])[:, left]
@@ -279,7 +285,7 @@ def standard_bits(ranking: Ranking, k: int) -> float:
         return 0.0
     candidates, axis = question.candidates, question.candidates.axis
     probability, none = ranking.probability[k], float(ranking.none[k])
-    active = np.flatnonzero(probability > 1e-4)
+    active = leading_rows(probability, 400)
     before = entropy_bits(np.append(probability[active], none))
     signal = np.clip(particles.signal[:, k], 1e-4, axis.nodes[-1])
     bins = np.floor(np.log(signal + 0.02) / STANDARD_SD).astype(int)
@@ -337,7 +343,7 @@ def energy_bits(ranking: Ranking, signal: Floats, k: int) -> float:
         return 0.0
     candidates, axis = question.candidates, question.candidates.axis
     probability = ranking.probability[k]
-    active = np.flatnonzero(probability > 1e-4)
+    active = leading_rows(probability, 200)
     if len(active) < 2:
         return 0.0
     weight = probability[active] / probability[active].sum()
@@ -350,14 +356,15 @@ def energy_bits(ranking: Ranking, signal: Floats, k: int) -> float:
     spread = np.hypot(ENERGY_INDEPENDENT * own, 0.003 * centre)
     kernels = axis.kernels(level, spread).astype(float)
     mixed = weight @ kernels
-    inner = np.array([_differential_entropy(row, axis.widths) for row in kernels])
-    bits = _differential_entropy(mixed, axis.widths) - float(weight @ inner)
+    inner = _differential_entropy(kernels, axis.widths)
+    bits = float(_differential_entropy(mixed, axis.widths)) - float(weight @ inner)
     return float(np.clip(bits, 0.0, entropy_bits(weight)) * probability[active].sum())
 
 
-def _differential_entropy(density: Floats, widths: Floats) -> float:
+def _differential_entropy(density: Floats, widths: Floats) -> Floats:
+    """Differential entropy in bits along the last axis."""
     positive = np.maximum(density, 1e-300)
-    return float(-(density * np.log2(positive)) @ widths)
+    return np.asarray(-(density * np.log2(positive)) @ widths)
 
 
 def diffraction_bits(ranking: Ranking, structures: Sequence[str], k: int) -> float:

@@ -72,11 +72,14 @@ class SignalAxis:
         """
         # A kernel narrower than the node spacing would slip between the nodes.
         floor = 0.75 * STEP * (signal + SHIFT)
-        spread = np.hypot(sd, floor)
-        deviation = (self.nodes[None, :] - signal[:, None]) / spread[:, None]
-        density = np.exp(-0.5 * deviation * deviation)
-        density /= (density @ self.widths)[:, None]
-        return density.astype(np.float32)
+        scale = np.sqrt(0.5) / np.hypot(sd, floor)
+        density = np.outer(scale, self.nodes).astype(np.float32)
+        density -= (scale * signal).astype(np.float32)[:, None]
+        np.square(density, out=density)
+        np.negative(density, out=density)
+        np.exp(density, out=density)
+        density /= (density @ self.widths.astype(np.float32))[:, None]
+        return density
 
     def draw(self, density: Floats, uniform: Floats) -> Floats:
         """Draw signals from an unnormalised, piecewise-linear `density` at the quantiles `uniform`."""

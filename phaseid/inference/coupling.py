@@ -21,7 +21,7 @@ Floats = NDArray[np.float64]
 Ints = NDArray[np.intp]
 
 # Rows that carry less of a cluster than this cannot change the answer visibly.
-_NEGLIGIBLE = 1e-5
+_NEGLIGIBLE = 1e-4
 
 
 @dataclass(frozen=True)
@@ -47,6 +47,8 @@ def couple(
     particles: Particles,
     set_of: Callable[[int], CandidateSet],
     weights: Floats,
+    rows: Floats,
+    none: Floats,
     known: dict[int, int],
     seed: int,
 ) -> tuple[Particles, Floats, Floats]:
@@ -61,6 +63,10 @@ def couple(
         The candidates as a given cluster shows them, P phases in R rows.
     weights : ndarray of shape (K, R)
         Prior weight of each row for each cluster, evidence included.
+    rows : ndarray of shape (K, R)
+        Probability of each row before the coupling; rows that carry nothing are not drawn.
+    none : ndarray of shape (K,)
+        Prior weight of "none of these" for each cluster, evidence included.
     known : mapping of int to int
         Clusters whose phase is given.
     seed : int
@@ -75,12 +81,14 @@ def couple(
         The same for "none of these".
     """
     generator = np.random.default_rng(seed + 1)
-    chosen = _resample(particles, 1 << 13, generator)
+    chosen = _resample(particles, 1 << 12, generator)
     identity = np.stack(
         [
             np.full(len(chosen), known[k])
             if k in known
-            else _draw_identities(problem, particles, set_of(k), weights[k], k, chosen, generator)
+            else _draw_identities(
+                problem, particles, set_of(k), weights[k], rows[k], none[k], k, chosen, generator
+            )
             for k in range(len(weights))
         ],
         axis=1,
@@ -124,6 +132,8 @@ def _draw_identities(
     particles: Particles,
     candidates: CandidateSet,
     weights: Floats,
+    probability: Floats,
+    none: float,
     k: int,
     chosen: Ints,
     generator: np.random.Generator,
@@ -132,7 +142,7 @@ def _draw_identities(
     axis, clipped = problem.axis, problem.observations[k].clipped
     below, share, _ = axis.locate(particles.signal[chosen, k])
     node = below + (generator.random(len(chosen)) < share)
-    rows = np.flatnonzero(weights > _NEGLIGIBLE * weights.max(initial=0.0))
+    rows = np.flatnonzero(probability > _NEGLIGIBLE * probability.max(initial=0.0))
     identity = np.full(len(chosen), -1, dtype=np.intp)
     order = np.argsort(node, kind="stable")
     bounds = np.flatnonzero(np.diff(node[order], prepend=-1))
@@ -144,8 +154,13 @@ def _draw_identities(
         if clipped == "high":
             column = 1.0 - column
         edges = np.cumsum(weights[rows] * column)
-        total = float(problem.densities[k, here]) if clipped is None else max(edges[-1], 1e-12)
-        picked = np.searchsorted(edges, generator.random(len(members)) * max(total, edges[-1]))
+        if not len(edges):
+            continue
+        # What is left above the rows is "none of these".
+        share = axis.nodes[here] / axis.nodes[-1]
+        beside = {None: 1.0 / axis.nodes[-1], "low": share, "high": 1.0 - share}[clipped]
+        total = edges[-1] + none * beside
+        picked = np.searchsorted(edges, generator.random(len(members)) * max(total, 1e-300))
         found = picked < len(rows)
         identity[members[found]] = candidates.phase[rows[picked[found]]]
     return identity

@@ -100,7 +100,7 @@ class Ranking:
     question: Question
 
 
-def rank(question: Question, seed: int = 0, effective: float = 2000.0) -> Ranking:
+def rank(question: Question, seed: int = 0, effective: float = 1200.0) -> Ranking:
     """Rank all phases for all clusters.
 
     Parameters
@@ -146,12 +146,21 @@ def rank(question: Question, seed: int = 0, effective: float = 2000.0) -> Rankin
     )
     grey_rows = _grey_factor(question, deposits)
     grey_none = _none_factor(question, deposits)
+    none_prior = none
     rows, none = _normalised(weights * grey_rows, none * grey_none)
     coupling_term = np.ones((len(rows), candidates.size))
     probability = candidates.by_phase(rows)
     if question.coupling is not None and len(rows) > 1:
         particles, coupling_term, none_term = couple(
-            question.coupling, problem, particles, question.set_of, weights, question.known, seed
+            question.coupling,
+            problem,
+            particles,
+            question.set_of,
+            weights,
+            rows,
+            none_prior,
+            question.known,
+            seed,
         )
         rows, none = _normalised(rows * coupling_term[:, candidates.phase], none * none_term)
         probability = candidates.by_phase(rows)

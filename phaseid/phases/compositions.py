@@ -16,7 +16,7 @@ __all__ = ["Compositions", "cache_folder", "composition_key", "compositions", "w
 Floats = NDArray[np.float64]
 
 # Compositions a variable phase is represented by.
-VARIANTS = 9
+VARIANTS = 5
 
 
 @dataclass(frozen=True)
