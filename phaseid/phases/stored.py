@@ -61,7 +61,8 @@ def stored(kind: str, key: str, make: Callable[[], Arrays]) -> Arrays:
     """
     path = cache_folder() / f"{kind}-{key}.npz"
     try:
-        with np.load(path, allow_pickle=False) as found:
+        # From bytes, as a damaged file would be left open.
+        with np.load(io.BytesIO(path.read_bytes()), allow_pickle=False) as found:
             return _full({name: found[name] for name in found.files})
     except (OSError, ValueError, KeyError, IndexError, TypeError, zipfile.BadZipFile, EOFError):
         made = make()

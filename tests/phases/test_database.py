@@ -222,9 +222,9 @@ def test_kept_records_equal_read_ones_and_follow_the_file(tmp_path, monkeypatch)
     path = write(tmp_path, GOOD)
     read, first = load(path), load_kept(path)
     assert first == read
-    monkeypatch.setattr("phaseid.phases.kept.load", None)
-    assert load_kept(path) == read  # from the cache, to the last field
-    monkeypatch.undo()
+    with monkeypatch.context() as patch:
+        patch.setattr("phaseid.phases.kept.load", None)
+        assert load_kept(path) == read  # from the cache, to the last field
     path.write_text(GOOD.replace("6.6", "6.5"), encoding="utf-8")
     assert load_kept(path).phases[0].density_range == (6.5, 6.9)
     for file in cache_folder().glob("database-*.json"):

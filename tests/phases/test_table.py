@@ -64,9 +64,9 @@ def test_cache_is_used_rebuilt_and_never_in_the_way(monkeypatch):
     first = compositions(PHASES)
     files = list(cache_folder().glob("compositions-*.npz"))
     assert files
-    monkeypatch.setattr("phaseid.phases.compositions.work_out", None)
-    np.testing.assert_array_equal(compositions(PHASES).mass_fractions, first.mass_fractions)
-    monkeypatch.undo()
+    with monkeypatch.context() as patch:
+        patch.setattr("phaseid.phases.compositions.work_out", None)
+        np.testing.assert_array_equal(compositions(PHASES).mass_fractions, first.mass_fractions)
     for file in cache_folder().glob("compositions-*.npz"):
         file.write_bytes(b"broken")
     np.testing.assert_array_equal(compositions(PHASES).mass_fractions, first.mass_fractions)
@@ -145,11 +145,11 @@ def test_kept_signals_equal_fresh_ones_and_follow_conditions_and_phases(monkeypa
     fewer = build(PHASES[1:], Conditions(energy_keV=17.0))
     assert fewer.row_signal.shape == fewer.rows.phase.shape
     # The second time nothing is worked out.
-    monkeypatch.setattr("phaseid.phases.table._physics", None)
-    np.testing.assert_array_equal(
-        build(PHASES, Conditions(energy_keV=17.0)).row_signal, fresh.row_signal
-    )
-    monkeypatch.undo()
+    with monkeypatch.context() as patch:
+        patch.setattr("phaseid.phases.table._physics", None)
+        np.testing.assert_array_equal(
+            build(PHASES, Conditions(energy_keV=17.0)).row_signal, fresh.row_signal
+        )
     for file in cache_folder().glob("signals-*.npz"):
         file.write_bytes(file.read_bytes()[:200])
     np.testing.assert_array_equal(
