@@ -39,6 +39,20 @@ def knowledge():
 
 
 @pytest.fixture(scope="session")
+def small_knowledge():
+    """Three mineral databases: enough for the session and the screen, and quick."""
+    from phaseid.hooks.host import make_host
+    from phaseid.phases.catalogue import merge
+    from phaseid.phases.kept import load_kept
+    from phaseid.session.knowledge import Knowledge
+
+    host = make_host(entry_points=False, folders=[])
+    names = ("silicates-framework", "carbonates-evaporites", "accessory-oxides")
+    files = [p for p in host.databases() if p.stem in names]
+    return Knowledge(host, merge([load_kept(p) for p in files]))
+
+
+@pytest.fixture(scope="session")
 def shared_folder():
     """Real images and published values beside the checkout; skipped where they are not there."""
     told = os.environ.get("PHASEID_SHARED")

@@ -17,6 +17,7 @@ from textual.widgets import DataTable, Footer, Static
 
 from phaseid.errors import InputError
 from phaseid.ui.actions import Action
+from phaseid.ui.arranging import Arranging
 from phaseid.ui.asking import Asking
 from phaseid.ui.widgets import CandidateList, ClusterList, GreyAxis, Picture
 from phaseid.ui.work import Answer, Plan, answer, needs_energy, open_work
@@ -46,7 +47,7 @@ class Came(Message):
         self.run, self.value = run, value
 
 
-class Bench(Asking, Screen[None]):
+class Bench(Asking, Arranging, Screen[None]):
     """Shows the present answer; every action goes through the session and comes back as a new answer."""
 
     CSS_PATH = "bench.tcss"

@@ -23,6 +23,8 @@ if TYPE_CHECKING:
 
 # Pixels drawn per character cell: enough for terminals that show real pixels.
 CELL = (16, 8)
+# Longest name in the list of candidates; the line below tells it in full.
+NAME = 34
 
 
 class Picture(Container, can_focus=True):
@@ -200,9 +202,9 @@ class CandidateList(DataTable[Any]):
     def show(self, cluster: ClusterAnswer | None, keep: int | None) -> None:
         if not self.columns:
             self.cursor_type = "row"
-            self.add_columns("prob.", "", "=", "phase", "formula", "mean Z", "eta", "grey")
+            self.add_columns("prob.", "", "=", "phase", "mean Z", "eta", "grey", "formula")
         self.clear()
-        if cluster is None:
+        if cluster is None or cluster.observation is None:
             return
         letters = group_letters(cluster)
         for candidate in cluster.candidates:
@@ -223,11 +225,12 @@ def _cells(candidate: Candidate, letters: dict[int, str]) -> list[Text | str]:
         Text(percent(candidate.probability), justify="right"),
         bar(candidate.probability, 6),
         letters.get(candidate.phase, ""),
-        Text(name),
-        Text(candidate.formula),
+        Text(name if len(name) <= NAME else name[: NAME - 1] + "…"),
         f"{candidate.mean_atomic_number:.2f}",
         f"{candidate.eta:.3f}",
         "" if grey != grey else f"{grey:.0f}±{candidate.predicted_grey_sd:.0f}",
+        # Last, as it can be long; the table scrolls sideways.
+        Text(candidate.formula),
     ]
 
 

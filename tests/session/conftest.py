@@ -36,9 +36,9 @@ def scene(tmp_path_factory):
 
 
 @pytest.fixture
-def session(scene, knowledge):
+def session(scene, small_knowledge):
     from dataclasses import replace
 
-    made = Session(knowledge)
+    made = Session(small_knowledge)
     made.state = replace(made.with_image(scene), energy_keV=20.0, contexts=("rock/sedimentary",))
     return made
