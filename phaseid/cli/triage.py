@@ -44,12 +44,13 @@ def command(
 
     seen = keys_file().with_name("hint-shown")
     first_time = not seen.exists()
-    app = Triage(Plan(sources, state, file), actions, first_time)
-    app.run()
     if first_time:
+        # Noted before it is shown: whoever is interrupted has seen it all the same.
         try:
             seen.parent.mkdir(parents=True, exist_ok=True)
             seen.touch()
         except OSError:
             pass
+    app = Triage(Plan(sources, state, file), actions, first_time)
+    app.run()
     return app.return_code or 0

@@ -88,7 +88,7 @@ def test_start_select_know_rank_export_quit_and_reopen_after_a_kill(terminal, sc
     shown = run.wait("Five lines to begin with")
     assert "k says which phase" in shown
     run.press("Escape")
-    shown = run.wait("20 keV", "scale not held", "prob.", "known phase")
+    shown = run.wait("20 keV", "scale not held", "prob.", "known phase", "●", "[")
     assert shown.count("●") >= 3  # candidates on the grey axis
     run.press("Up", "Up", "Up", "k")
     run.wait("Which phase is cluster 1")
