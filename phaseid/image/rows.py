@@ -134,14 +134,14 @@ def _bands(profile: FloatArray, jumps: NDArray[np.intp]) -> tuple[FloatArray, ND
         before = float(np.median(profile[max(0, jump - 5) : jump + 1]))
         height = float(profile[jump + 1] - profile[jump])
         last = min(rows - 1, int(jump + LONGEST_BAND * rows))
-        end = jump + 3
+        end = min(jump + 3, rows - 1)
         while end < last and abs(float(np.median(profile[end : end + 5])) - before) > BACK * abs(
             height
         ):
             end += 1
         after = float(np.median(profile[end : end + 5]))
         span = np.arange(jump + 1, end)
-        line = before + (after - before) * (span - jump) / (end - jump)
+        line = before + (after - before) * (span - jump) / max(end - jump, 1)
         bands[span] = profile[span] - line
         # The tail of the decay goes on for as long again.
         doubtful[max(0, jump - 1) : end + (end - jump)] = True

@@ -115,6 +115,16 @@ def test_shading_goes_and_phases_stay(kind: str, code: str) -> None:
     assert cases.right_pixels(found.labels, case) > 0.99
 
 
+@pytest.mark.parametrize("row", [0, 1, 380, 381, 382, 383])
+def test_a_jump_at_the_frame_does_no_harm(row: int) -> None:
+    rng = np.random.default_rng(0)
+    scene = scenes.grains((384, 384), [100.0, 140.0], 40, rng)
+    image = scenes.record(scene, rng, noise=4).astype(np.float32)
+    image[row:] += 14.0
+    found = cluster_image(from_array(image))
+    assert found.labels.all()
+
+
 def test_a_large_grain_is_no_shading() -> None:
     rng = np.random.default_rng(0)
     scene = scenes.with_blur(scenes.grains((512, 512), [100.0, 108.0], 300, rng), 1.0)
