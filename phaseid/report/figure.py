@@ -20,6 +20,7 @@ if TYPE_CHECKING:
 COLOURS = ("#0072B2", "#E69F00", "#009E73", "#CC79A7", "#D55E00", "#56B4E9", "#F0E442", "#000000")
 LARGEST_SIDE = 1400
 CANDIDATES_SHOWN = 4
+LEAST_SHOWN = 0.002
 
 
 def figure(image: GreyImage, clustering: Clustering, document: Mapping[str, Any]) -> Figure:
@@ -152,7 +153,11 @@ def _axis(axes: Axes, clustering: Clustering, clusters: Sequence[Mapping[str, An
 def _candidates_below(axes: Axes, clusters: Sequence[Mapping[str, Any]]) -> float:
     level = 0.0
     for n, cluster in enumerate(clusters):
-        shown = [c for c in cluster["candidates"] if c["predicted_grey"] is not None]
+        shown = [
+            c
+            for c in cluster["candidates"]
+            if c["predicted_grey"] is not None and c["probability"] >= LEAST_SHOWN
+        ]
         for candidate in shown[:CANDIDATES_SHOWN]:
             level += 1
             height = -0.075 * level

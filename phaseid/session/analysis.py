@@ -325,7 +325,8 @@ def _names(state: State, picture: Picture) -> dict[int, str]:
 def _candidates(
     candidates: Candidates, ranking: Ranking, k: int, top: int, listed: Sequence[int]
 ) -> tuple[tuple[Candidate, ...], float]:
-    placing = place(ranking, k, top, also=listed)
+    # Nothing else is a candidate of a cluster the user has named.
+    placing = place(ranking, k, 1 if k in ranking.question.known else top, also=listed)
     return (
         tuple(
             candidates.describe(
