@@ -14,6 +14,8 @@ from phaseid.image.notices import Finding
 LEAST_SHARE = 0.5
 LEAST_EXCESS = 0.25
 MARGIN = 0.08
+# Rows away from a join at which the two sides are compared; wider than most cracks.
+REACH = 16
 MOST_SAMPLES = 768
 
 
@@ -64,6 +66,10 @@ def _jumps(data: NDArray[Any], sd: float) -> list[int]:
         if not margin <= row < rows - margin:
             continue
         if found and row - found[-1] <= 8:
+            continue
+        # A crack along the rows has the same material on either side; two images have not.
+        beyond = np.abs(thin[min(int(row) + REACH, rows - 1)] - thin[max(int(row) - REACH, 0)])
+        if np.mean(beyond > 5.0 * max(sd, 0.5)) < LEAST_EXCESS:
             continue
         # A border between phases is a step of one sign along the row; a join has both.
         step = thin[min(int(row) + 3, rows - 1)] - thin[max(int(row) - 3, 0)]

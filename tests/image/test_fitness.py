@@ -78,3 +78,13 @@ def test_no_false_alarm(code: str) -> None:
         scene = scenes.with_blur(scenes.grains((300, 300), [60.0, 90.0, 200.0], 30, rng), 1.0)
         image = scenes.record(scene, rng, noise=3.0, noise_slope=0.05)
         assert code not in {f.code for f in assess(from_array(image))}
+
+
+def test_a_crack_across_the_frame_is_no_join():
+    """A crack that wanders about a row jumps up and down along the whole frame."""
+    rng = np.random.default_rng(5)
+    image = np.full((256, 320), 180.0)
+    path = 128 + np.cumsum(rng.normal(0, 0.5, 320))
+    image[np.abs(np.arange(256)[:, None] - path) < 2.5] = 15.0
+    data = np.clip(image + rng.normal(0, 3, image.shape), 0, 255).astype(np.uint8)
+    assert "several-images" not in [f.code for f in assess(from_array(data))]
