@@ -32,6 +32,7 @@ COMMANDS = {
     "report": ("report", "Write a report of a session or an image."),
     "database": ("database", "List, show, check, import and add phases."),
     "plugins": ("plugins", "List plugins and contexts."),
+    "quadrants": ("quadrants", "Combine the four images of a divided detector."),
     "learned": ("learned", "Show or clear what this laboratory has accepted."),
 }
 

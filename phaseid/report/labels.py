@@ -6,6 +6,8 @@ import io
 import json
 from typing import Any
 
+from numpy.typing import NDArray
+
 from phaseid.image.clustering import Clustering
 
 
@@ -23,14 +25,30 @@ def label_tiff(clustering: Clustering, pixel_size_nm: float | None) -> bytes:
         A deflate-compressed TIFF of the image's size; 0 where no cluster is assigned, else the
         cluster's id. The description holds the clusters' mean greys as JSON.
     """
-    import tifffile
-
     description = json.dumps(
         {
             "schema": "phaseid-labels/1",
             "clusters": {str(c.id): round(float(c.grey_mean), 4) for c in clustering.clusters},
         }
     )
+    return grey_tiff(clustering.labels, pixel_size_nm, description)
+
+
+def grey_tiff(data: NDArray[Any], pixel_size_nm: float | None, description: str = "") -> bytes:
+    """Encode an image as a deflate-compressed TIFF with its pixel size.
+
+    Parameters
+    ----------
+    data : ndarray of shape (rows, columns)
+    pixel_size_nm : float or None
+    description : str
+
+    Returns
+    -------
+    bytes
+    """
+    import tifffile
+
     options: dict[str, Any] = {}
     if pixel_size_nm:
         # Pixels per centimetre, the usual unit of the resolution tags.
@@ -39,7 +57,7 @@ def label_tiff(clustering: Clustering, pixel_size_nm: float | None) -> bytes:
     stream = io.BytesIO()
     tifffile.imwrite(
         stream,
-        clustering.labels,
+        data,
         compression="zlib",
         description=description,
         metadata=None,
