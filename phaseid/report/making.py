@@ -4,9 +4,10 @@ from __future__ import annotations
 
 from phaseid.physics.backscatter import get_rule
 from phaseid.physics.elemental import get_model
-from phaseid.report.content import Report, Section, build
+from phaseid.report.content import Report, Section, Table, build
 from phaseid.report.document import document
 from phaseid.report.figure import figure, to_bytes
+from phaseid.session.sensitivity import sensitivity
 from phaseid.session.work import Session
 
 
@@ -41,7 +42,33 @@ def report_of(session: Session, index: int, top: int) -> Report:
         "electron range: Kanaya & Okayama 1972",
     ]
     more = [Section(s.title, s.paragraphs) for s in session.knowledge.host.report_sections(made)]
-    return build(made, picture, sources, [*_decisions(session, index), *more])
+    return build(
+        made, picture, sources, [*_decisions(session, index), _assumptions(session, index), *more]
+    )
+
+
+def _assumptions(session: Session, index: int) -> Section:
+    """Which assumption carries the answer."""
+    changes = sensitivity(session, index)
+    rows = tuple(
+        (
+            c.assumption,
+            f"{100 * c.largest:.0f} %",
+            str(c.cluster),
+            c.before,
+            "the same" if c.after == c.before else c.after,
+        )
+        for c in changes
+    )
+    heading = ("Changed assumption", "Largest change", "Cluster", "Leader", "Leader then")
+    return Section(
+        "Which assumption carries the answer",
+        (
+            "Each line changes one assumption and ranks again; the largest change of any candidate's "
+            "probability tells how much rests on it.",
+        ),
+        Table(heading, rows),
+    )
 
 
 def _decisions(session: Session, index: int) -> list[Section]:
