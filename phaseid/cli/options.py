@@ -85,6 +85,12 @@ def evidence_options(command: Callable[..., Any]) -> Callable[..., Any]:
                 metavar="GREY:Mg",
                 help="X-ray elements looked for and not found; repeatable.",
             ),
+            click.option(
+                "--content",
+                multiple=True,
+                metavar="GREY:Fe=60,O=30",
+                help="A quick quantification in mass per cent; repeatable.",
+            ),
         ]
     ):
         command = option(command)
@@ -106,6 +112,7 @@ def build_state(
     dark: float | None = None,
     seen: Sequence[str] = (),
     unseen: Sequence[str] = (),
+    content: Sequence[str] = (),
     same_settings: bool = False,
 ) -> State:
     """The state that the options describe, without images.
@@ -132,6 +139,7 @@ def build_state(
         marks.append(Mark("dark", dark))
     marks += [_mark("seen", "--seen", ":", "GREY:Fe,O", text) for text in seen]
     marks += [_mark("unseen", "--unseen", ":", "GREY:Mg", text) for text in unseen]
+    marks += [_mark("content", "--content", ":", "GREY:Fe=60,O=30", text) for text in content]
     return replace(state, marks=tuple(marks))
 
 
@@ -153,4 +161,5 @@ _EXAMPLE = {
     "standard": '--standard 200="Cu"',
     "seen": "--seen 142:Si,O",
     "unseen": "--unseen 142:Al",
+    "content": "--content 142:Si=47,O=53",
 }

@@ -5,7 +5,7 @@ Each function returns likelihoods per composition variant; pieces of evidence mu
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Iterable, Mapping
 
 import numpy as np
 from numpy.typing import NDArray
@@ -20,6 +20,11 @@ Floats = NDArray[np.float64]
 FALSE_REPORT = 0.02
 # Width of the transition from invisible to visible, in ln(mass fraction). Common practice.
 TRANSITION = 0.6
+# Errors of a quick quantification, and the chance that it is of something else. Common practice.
+CONTENT_RELATIVE = 0.10
+CONTENT_ABSOLUTE = 0.01
+TOTAL_SD = 0.15
+WRONG_CONTENT = 1e-3
 
 
 def detection_limits(energy_keV: float = 20.0) -> Floats:
@@ -112,6 +117,44 @@ def elements_evidence(
     for symbol in unseen:
         likelihood = likelihood * (1.0 - visible[:, atomic_number(symbol) - 1])
     return likelihood
+
+
+def content_evidence(candidates: CandidateSet, content: Mapping[str, float]) -> Floats:
+    """Likelihood of a quick quantification under each row.
+
+    Parameters
+    ----------
+    candidates : CandidateSet
+        R rows.
+    content : mapping of str to float
+        Mass per cent of each element that was quantified; the total need not be 100, and elements that
+        are not named say nothing.
+
+    Returns
+    -------
+    ndarray of shape (R,)
+        Relative to a perfect agreement.
+
+    Raises
+    ------
+    InputError
+        If a symbol is not an element.
+
+    Notes
+    -----
+    Common practice for a standardless quantification: each value is good to 10 % of itself and one mass
+    per cent, the total to 15 %. The common factor is integrated out (a Gaussian with the total's prior).
+    """
+    columns = [atomic_number(symbol) - 1 for symbol in content]
+    measured = np.array([v / 100.0 for v in content.values()])
+    weight = 1.0 / (CONTENT_RELATIVE * measured) ** 2
+    weight = 1.0 / (1.0 / weight + CONTENT_ABSOLUTE**2)
+    true = candidates.mass_fractions[:, columns].astype(float)
+    prior = TOTAL_SD**-2.0
+    factor = (true @ (weight * measured) + prior) / (true**2 @ weight + prior)
+    gap = measured - factor[:, None] * true
+    misfit = gap**2 @ weight + prior * (factor - 1.0) ** 2
+    return np.asarray(WRONG_CONTENT + (1.0 - WRONG_CONTENT) * np.exp(-0.5 * misfit))
 
 
 def none_likelihood(candidates: CandidateSet, likelihood: Floats) -> float:

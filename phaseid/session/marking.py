@@ -9,7 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from phaseid.errors import InputError
-from phaseid.inference.evidence import elements_evidence, none_likelihood
+from phaseid.inference.evidence import content_evidence, elements_evidence, none_likelihood
 from phaseid.inference.observations import Anchor, Observation, dark_level
 from phaseid.session.candidates import Candidates
 from phaseid.session.knowledge import Knowledge
@@ -124,6 +124,29 @@ def gather(
     return gatherer.marked
 
 
+def read_content(text: str) -> dict[str, float]:
+    """Read ``Fe=60,O=30``: mass per cent by element.
+
+    Raises
+    ------
+    InputError
+        If it is not of that form.
+    """
+    found: dict[str, float] = {}
+    for part in text.split(","):
+        symbol, _, amount = part.strip().partition("=")
+        try:
+            value = float(amount)
+        except ValueError:
+            value = float("nan")
+        if not 0 < value <= 100:
+            raise InputError(
+                f"{text!r} is no content; write mass per cent by element, for example Fe=60,O=30."
+            )
+        found[symbol.strip()] = value
+    return found
+
+
 class _Gatherer:
     """Takes the marks one by one."""
 
@@ -145,6 +168,7 @@ class _Gatherer:
             "dark": self._dark,
             "seen": self._elements,
             "unseen": self._elements,
+            "content": self._content,
             "rejected": self._rejected,
             "accepted": self._listed,
             "listed": self._listed,
@@ -198,6 +222,12 @@ class _Gatherer:
         kept = self.marked.seen if mark.kind == "seen" else self.marked.unseen
         symbols = [s.strip() for s in mark.value.split(",") if s.strip()]
         kept.setdefault(nearest(self.places, mark).observation, []).extend(symbols)
+
+    def _content(self, mark: Mark) -> None:
+        k = nearest(self.places, mark).observation
+        likelihood = content_evidence(self.candidates.set, read_content(mark.value))
+        self.marked.evidence[k] *= likelihood
+        self.marked.none_evidence[k] *= none_likelihood(self.candidates.set, likelihood)
 
     def _rejected(self, mark: Mark) -> None:
         k, phase = nearest(self.places, mark).observation, self.candidates.index(mark.value)

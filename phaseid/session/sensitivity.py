@@ -81,7 +81,7 @@ def _variants(session: Session, index: int) -> list[tuple[str, State]]:
             state.without_mark(m),
         )
         for m in state.marks
-        if m.kind in ("known", "standard", "dark", "seen", "unseen") and m.image == index
+        if m.kind in ("known", "standard", "dark", "seen", "unseen", "content") and m.image == index
     ]
     found += [
         (

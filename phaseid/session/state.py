@@ -16,6 +16,7 @@ MarkKind = Literal[
     "dark",
     "seen",
     "unseen",
+    "content",
     "rejected",
     "accepted",
     "named",
@@ -34,7 +35,7 @@ class Mark:
     kind : str
         "known" (this cluster is phase `value`), "standard" (a standard of formula `value` imaged at the
         same settings), "dark" (no signal), "seen" / "unseen" (X-ray elements in `value`, separated by
-        commas), "rejected" / "accepted" (candidate `value`, reason or note in `note`), "named" (what
+        commas), "content" (mass per cent in `value`, ``Fe=60,O=30``), "rejected" / "accepted" (candidate `value`, reason or note in `note`), "named" (what
         to call the cluster), "ignored" (leave the cluster out), "listed" (show phase `value` always).
     grey : float
         The cluster is the one nearest this grey.

@@ -36,6 +36,7 @@ ACTIONS: tuple[Action, ...] = (
     Action("forget", "K", "forget known", "Take back what was said about the selected cluster."),
     Action("seen", "x", "X-ray seen", "Give elements an X-ray spectrum of the cluster shows.", True),
     Action("unseen", "X", "X-ray not seen", "Give elements that were looked for and not found."),
+    Action("content", "y", "content", "Give a quick quantification of the cluster in mass per cent."),
     Action("standard", "s", "standard", "Give a standard imaged at the same settings: GREY=FORMULA."),
     Action("dark", "d", "dark level", "Give the grey with no beam."),
     Action("context", "c", "context", "Choose what the sample is; several at once.", True),

@@ -61,6 +61,13 @@ class Asking(Acting):
     def action_unseen(self) -> None:
         self._ask_elements("unseen", "Elements looked for and not found in the spectrum")
 
+    def action_content(self) -> None:
+        if self.cluster is not None:
+            self.app.push_screen(
+                Ask(f"Content of cluster {self.cluster.id} in mass per cent", "Fe=60, O=30"),
+                lambda text: self.mark("content", text.replace(" ", "")) if text else None,
+            )
+
     def action_standard(self) -> None:
         self.app.push_screen(
             Ask("A standard imaged at the same settings", "GREY=FORMULA, for example 200=Cu"),

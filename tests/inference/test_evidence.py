@@ -5,9 +5,11 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
+from phaseid.errors import InputError
 from phaseid.inference.advice import AdviceContext, advise, element_bits, entropy_bits
 from phaseid.inference.coupling import Coupling
 from phaseid.inference.evidence import (
+    content_evidence,
     detection_limits,
     elements_evidence,
     none_likelihood,
@@ -54,6 +56,18 @@ def test_seen_and_unseen_elements_weigh(oxides):
     assert likelihood.argmax() in (1, 5)
     assert likelihood[3] < 0.1 * likelihood[1]
     assert 0 < none_likelihood(oxides, likelihood) < likelihood[1]
+
+
+def test_quick_quantification_weighs_ratios_and_forgives_the_total(oxides):
+    right = content_evidence(oxides, {"Fe": 70.0, "O": 30.0})
+    assert right.argmax() == 1
+    low_total = content_evidence(oxides, {"Fe": 63.0, "O": 27.0})
+    assert low_total.argmax() == 1
+    assert low_total[1] > 0.5 * right[1]
+    assert right[2] < 0.01 * right[1]
+    assert content_evidence(oxides, {"O": 30.0})[3] == pytest.approx(1.0, abs=0.01)
+    with pytest.raises(InputError, match="Qq"):
+        content_evidence(oxides, {"Qq": 3.0})
 
 
 def test_terms_add_up_to_the_probability(oxides):

@@ -96,6 +96,8 @@ def test_formula_that_no_database_has_can_be_known(session):
         ([Mark("seen", None, "Qq")], "Qq"),
         ([Mark("seen", None, "Fe"), Mark("unseen", None, "Fe")], "both seen and not seen"),
         ([Mark("standard", 100, "Qq2")], "Qq"),
+        ([Mark("content", None, "Fe60")], "no content"),
+        ([Mark("content", None, "Qq=60")], "Qq"),
     ],
 )
 def test_evidence_that_cannot_be_used_is_refused_and_nothing_changes(session, marks, word):

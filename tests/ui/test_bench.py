@@ -78,6 +78,12 @@ async def test_elements_seen_and_not_seen(bench):
         await answer_dialog(pilot, "Si")
         await settled(app, pilot)
         assert app.bench.clusters[1].unseen == ("Si",)
+        before = state_of(app)
+        await pilot.press("y")
+        await answer_dialog(pilot, "Ca=40, C=12")
+        await settled(app, pilot)
+        assert state_of(app).marks[-1].value == "Ca=40,C=12"
+        await undone(app, pilot, before)
 
 
 async def test_standard_and_dark_level(bench):
@@ -415,12 +421,12 @@ async def test_missing_or_broken_file_ends_with_one_sentence(bench, tmp_path):
 
 def test_keys_can_be_remapped(tmp_path):
     path = tmp_path / "keys.txt"
-    path.write_text("know = y  # mine\n\n", encoding="utf-8")
-    assert next(a.key for a in remapped(path) if a.name == "know") == "y"
+    path.write_text("know = j  # mine\n\n", encoding="utf-8")
+    assert next(a.key for a in remapped(path) if a.name == "know") == "j"
     path.write_text("know = u\n", encoding="utf-8")
     with pytest.raises(InputError, match="given to two"):
         remapped(path)
-    path.write_text("fly = y\n", encoding="utf-8")
+    path.write_text("fly = j\n", encoding="utf-8")
     with pytest.raises(InputError, match="line 1"):
         remapped(path)
 
