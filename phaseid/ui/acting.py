@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from typing import TYPE_CHECKING, Any
 
 from textual.screen import Screen
@@ -30,6 +31,8 @@ class Acting(Base):
         index: int
         selected: int | None
         corner: tuple[int, int] | None
+        run: int
+        unanswered: int
 
         @property
         def cluster(self) -> ClusterAnswer | None: ...
@@ -41,6 +44,7 @@ class Acting(Base):
         def with_state(self, **changes: Any) -> State: ...
         def say(self, text: str) -> None: ...
         def rank(self, quiet: bool = False) -> None: ...
+        def aside(self, job: Callable[[], Any], then: Callable[[Any], None]) -> Any: ...
         def select(self, cluster: int) -> None: ...
         def refresh_selected(self) -> None: ...
 

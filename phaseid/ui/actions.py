@@ -65,6 +65,7 @@ ACTIONS: tuple[Action, ...] = (
     Action("export", "p", "write files", "Write the candidates document, tables, labels and figure.", True),
     Action("undo", "u", "undo", "Take the last action back.", True),
     Action("redo", "U", "redo", "Do again what was undone."),
+    Action("stop", "escape", "stop", "Stop the work in progress; once more begins it again."),
     Action("help", "question_mark", "help", "What the keys do.", True),
     Action("quit", "q", "quit", "Leave; everything is saved.", True),
 )  # fmt: skip

@@ -6,7 +6,6 @@ from collections.abc import Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
-from phaseid.errors import InputError
 from phaseid.ui.acting import Acting, number
 from phaseid.ui.actions import HINT
 from phaseid.ui.dialogs import Ask, Pick, Show
@@ -202,12 +201,12 @@ class Arranging(Acting):
 
         path = Path(self.answered.image.path)
         folder = path.parent / f"{path.stem}-candidates"
-        try:
-            written = export(self.answered, folder)
-        except InputError as error:
-            self.say(str(error))
-            return
-        self.say(f"Wrote {', '.join(p.name for p in written)} to {folder}.")
+        answered = self.answered
+        self.say(f"Writing to {folder}…")
+        self.aside(
+            lambda: export(answered, folder),
+            lambda written: self.say(f"Wrote {', '.join(p.name for p in written)} to {folder}."),
+        )
 
     def action_undo(self) -> None:
         self._step("undo", "Nothing to take back.", "Taken back")
@@ -222,6 +221,8 @@ class Arranging(Acting):
         if label is None:
             self.say(empty)
             return
+        if name == "undo":
+            self.unanswered = max(0, self.unanswered - 1)
         self.say(f"{word}: {label}.")
         self.rank(quiet=True)
 
@@ -234,6 +235,8 @@ class Arranging(Acting):
         self.app.push_screen(Show("Five lines to begin with" if first else "Help", text))
 
     def action_quit(self) -> None:
+        # A thread that is still at work stops at its next step.
+        self.run += 1
         self.app.exit()
 
 

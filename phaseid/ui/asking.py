@@ -5,7 +5,6 @@ from __future__ import annotations
 from collections.abc import Sequence
 from typing import TYPE_CHECKING
 
-from phaseid.errors import InputError
 from phaseid.ui.acting import Acting, number
 from phaseid.ui.dialogs import Ask, Pick, PickSeveral, Show
 
@@ -184,13 +183,14 @@ class Asking(Acting):
             return
         from phaseid.ui.work import compare_models
 
-        try:
-            changed = compare_models(self.session, self.session.state, self.index, name)
-        except InputError as error:
-            self.say(str(error))
-            return
-        self.app.push_screen(Show(f"What {name} changes", changed))
-        self.take(f"eta model {name}", self.with_state(model=name))
+        session, state, index = self.session, self.session.state, self.index
+
+        def switch(changed: str) -> None:
+            self.app.push_screen(Show(f"What {name} changes", changed))
+            self.take(f"eta model {name}", self.with_state(model=name))
+
+        self.say(f"Comparing with {name}…")
+        self.aside(lambda: compare_models(session, state, index, name), switch)
 
     # --- decisions ---
 

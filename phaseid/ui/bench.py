@@ -91,6 +91,16 @@ class Bench(Asking, Arranging, Screen[None]):
         self.busy = True
         self._thread(self.run, job)
 
+    @work(thread=True, group="aside", exit_on_error=False)
+    def aside(self, job: Callable[[], Any], then: Callable[[Any], None]) -> None:
+        """Work something out beside the answers and hand it, or what went wrong, over."""
+        try:
+            value = job()
+        except InputError as error:
+            self.app.call_from_thread(self.say, str(error))
+            return
+        self.app.call_from_thread(then, value)
+
     @work(thread=True, exclusive=True, group="answers", exit_on_error=False)
     def _thread(self, run: int, job: Callable[[Callable[[float, str], None]], Any]) -> None:
         def progress(share: float, word: str) -> None:
@@ -131,12 +141,29 @@ class Bench(Asking, Arranging, Screen[None]):
             return
         # What cannot be answered is taken back at once, on disk as well.
         label = self.session.undo() if self.unanswered else None
-        self.unanswered = False
+        self.unanswered = max(0, self.unanswered - 1)
         self.say(f"{error}" + (f" Taken back: {label}." if label else ""))
         if label:
             self.rank(quiet=True)
 
-    unanswered = False
+    def action_stop(self) -> None:
+        if self.session is None:
+            # There is nothing to show yet, and nothing was said that could be lost.
+            self.action_quit()
+        elif self.busy:
+            self.run += 1
+            self.busy = False
+            back = [self.session.undo() for _ in range(self.unanswered)]
+            self.unanswered = 0
+            told = f" Taken back: {'; '.join(filter(None, back))}." if back else ""
+            self.say(f"Stopped.{told} The same key begins again.")
+            self.stopped = True
+        elif self.stopped:
+            self.rank()
+
+    # Actions taken since the last answer; what cannot be answered is taken back.
+    unanswered = 0
+    stopped = False
     opened_message = ""
 
     def take(self, label: str, state: State) -> None:
@@ -148,7 +175,7 @@ class Bench(Asking, Arranging, Screen[None]):
         except InputError as error:
             self.say(str(error))
             return
-        self.unanswered = True
+        self.unanswered += 1
         self.done = label
         self.rank()
 
@@ -159,7 +186,7 @@ class Bench(Asking, Arranging, Screen[None]):
         session, index = self.session, self.index
         if session is None:
             return
-        self.keep_said = quiet
+        self.keep_said, self.stopped = quiet, False
         state = session.state
         self._start(lambda progress: answer(session, state, index, progress))
 
@@ -168,7 +195,7 @@ class Bench(Asking, Arranging, Screen[None]):
     # --- showing ---
 
     def _show(self, answered: Answer) -> None:
-        self.unanswered = False
+        self.unanswered = 0
         self.answered = answered
         clusters = self.clusters
         ids = [c.id for c in clusters]

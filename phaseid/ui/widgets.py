@@ -1,4 +1,7 @@
-"""The parts of the screen. They show what they are given and say what was touched."""
+"""The parts of the screen. They show what they are given and say what was touched.
+
+What draws is imported where it draws: the frame stands before numpy and scipy are loaded.
+"""
 
 from __future__ import annotations
 
@@ -13,11 +16,11 @@ from textual.message import Message
 from textual.widgets import DataTable, Static
 from textual_image.widget import Image
 
-from phaseid.report.axis import Line, axis_lines, group_letters
-from phaseid.report.picture import View, point_at, render
 from phaseid.report.terminal import bar, percent
 
 if TYPE_CHECKING:
+    from phaseid.report.axis import Line
+    from phaseid.report.picture import View
     from phaseid.session.answers import Candidate, ClusterAnswer
     from phaseid.ui.work import Answer
 
@@ -48,6 +51,8 @@ class Picture(Container, can_focus=True):
         yield Image(id="pixels")
 
     def show(self, answered: Answer, selected: int | None) -> None:
+        from phaseid.report.picture import View
+
         if self.answered is None or self.answered.image.sha256 != answered.image.sha256:
             self.view = View.whole(answered.image.data.shape)
             self.cursor = None
@@ -63,6 +68,8 @@ class Picture(Container, can_focus=True):
         ):
             return
         from PIL import Image as Pixels
+
+        from phaseid.report.picture import render
 
         size = (self.size.height * CELL[0], self.size.width * CELL[1])
         drawn = render(
@@ -81,6 +88,8 @@ class Picture(Container, can_focus=True):
     def on_click(self, event: events.Click) -> None:
         if self.answered is None or self.view is None:
             return
+        from phaseid.report.picture import point_at
+
         height, width = self.size.height, self.size.width
         aspect = width * CELL[1] / (height * CELL[0])
         found = point_at(
@@ -115,6 +124,8 @@ class Picture(Container, can_focus=True):
         self.post_message(self.Touched(*self.cursor))
 
     def zoom(self, factor: float) -> None:
+        from phaseid.report.picture import View
+
         if self.view is not None:
             if self.cursor is not None:
                 self.view = View(float(self.cursor[0]), float(self.cursor[1]), self.view.zoom)
@@ -147,6 +158,8 @@ class GreyAxis(Static, can_focus=False):
     def draw(self) -> None:
         if self.answered is None or self.size.width < 10:
             return
+        from phaseid.report.axis import axis_lines
+
         clusters = self.answered.analysis.of_image(self.answered.index)
         values, counts = self.answered.clustering.histogram
         self.lines = axis_lines(
@@ -204,6 +217,8 @@ class CandidateList(DataTable[Any]):
             self.cursor_type = "row"
             self.add_columns("prob.", "", "=", "phase", "mean Z", "eta", "grey", "formula")
         self.clear()
+        from phaseid.report.axis import group_letters
+
         if cluster is None or cluster.observation is None:
             return
         letters = group_letters(cluster)
