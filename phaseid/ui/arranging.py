@@ -231,7 +231,8 @@ class Arranging(Acting):
         hint = "\n".join(HINT)
         where = self.app.focused.id if self.app.focused is not None else ""
         part = _PARTS.get(where or "", "")
-        text = hint if first else f"{part}\n\n{keys}\n\n{hint}".strip()
+        palette = "Ctrl+P finds every action by name."
+        text = hint if first else f"{part}\n\n{keys}\n\n{palette}\n\n{hint}".strip()
         self.app.push_screen(Show("Five lines to begin with" if first else "Help", text))
 
     def action_quit(self) -> None:

@@ -79,7 +79,7 @@ class Bench(Asking, Arranging, Screen[None]):
         yield GreyAxis(id="axis")
         yield CandidateList(id="candidates")
         yield Static("Opening…", id="said", markup=False)
-        yield Footer(compact=True)
+        yield Footer(id="footer", compact=True, show_command_palette=False)
 
     def on_mount(self) -> None:
         self._start(lambda progress: open_work(self.plan, progress))
@@ -239,7 +239,7 @@ class Bench(Asking, Arranging, Screen[None]):
         warned = len(self.answered.notices) + len(analysis.notices)
         if warned:
             parts.append(f"{warned} notices (F2)")
-        self.query_one("#title", Static).update("  |  ".join(parts))
+        self.query_one("#title", Static).update(" | ".join(parts))
 
     def _summary(self) -> str:
         assert self.answered is not None

@@ -82,7 +82,13 @@ def open_work(plan: Plan, progress: Progress) -> Opened:
     file = plan.file or session_file(first)
     if file.exists():
         session = Session.reopen(file, knowledge)
-        return Opened(session, f"Reopened {file.name} where it was left; delete it to start anew.")
+        added = _add_missing(session, plan.sources)
+        told = f" Added {', '.join(added)}; i shows the next image." if added else ""
+        return Opened(
+            session,
+            f"Reopened {file.name} where it was left, not with the options of the command line; "
+            f"delete it to start anew.{told}",
+        )
     session = Session(knowledge, plan.state)
     for n, source in enumerate(plan.sources):
         progress(0.1 + 0.2 * n / len(plan.sources), f"reading {Path(source).name}")
@@ -92,6 +98,17 @@ def open_work(plan: Plan, progress: Progress) -> Opened:
 
     save(file, session.state, session.history)
     return Opened(session, f"Every action is saved in {file}.")
+
+
+def _add_missing(session: Session, sources: tuple[str, ...]) -> list[str]:
+    """Take images the session does not have yet into it; each can be taken back."""
+    added = []
+    for source in sources:
+        if Path(source).resolve() not in {Path(i.path).resolve() for i in session.state.images}:
+            name = Path(source).name
+            session.apply(f"added {name}", session.with_image(source))
+            added.append(name)
+    return added
 
 
 def session_file(image: Path) -> Path:

@@ -70,3 +70,19 @@ async def answer_dialog(pilot, text):
 
 def with_energy(energy):
     return replace(STATE, energy_keV=energy)
+
+
+def state_of(app):
+    return app.bench.session.state
+
+
+async def undone(app, pilot, before):
+    """The last action can be taken back and done again."""
+    after = state_of(app)
+    assert after != before
+    await pilot.press("u")
+    await settled(app, pilot)
+    assert state_of(app) == before
+    await pilot.press("U")
+    await settled(app, pilot)
+    assert state_of(app) == after

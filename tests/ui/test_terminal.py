@@ -8,6 +8,7 @@ import shutil
 import subprocess
 import sys
 import time
+import uuid
 
 import pytest
 
@@ -22,7 +23,8 @@ class Terminal:
     """A program in a terminal of its own server, so that nothing of the user's is touched."""
 
     def __init__(self, folder, command, size=(110, 36)):
-        self.socket = str(folder / "tmux.sock")
+        # One for each server: the last one may still be going.
+        self.socket = str(folder / f"tmux-{uuid.uuid4().hex[:8]}.sock")
         home = {
             **os.environ,
             "HOME": str(folder),
